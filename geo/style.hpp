@@ -3,7 +3,9 @@
 
 #include "layers.hpp"
 
+#include <cstddef>
 #include <cstdint>
+#include <optional>
 #include <string>
 #include <vector>
 
@@ -44,13 +46,14 @@ std::vector<double> class_limits(std::vector<double> values, int count, bool div
 
 /// One symbol and which rows get it.
 struct StyleRule {
-    enum class Test { all, range, equal, missing };
+    enum class Test { all, range, equal, otherwise }; ///< otherwise: no other rule holds
     Test test = Test::all;
     std::string column;
     double from = 0.0, to = 0.0; ///< range: from <= value < to
     bool closed = false;         ///< range: value <= to (the last class)
-    std::string value;           ///< equal
-    std::string label;           ///< for the legend
+    std::string value;           ///< equal; of booleans `true` or `false`
+    bool is_boolean = false;
+    std::string label; ///< for the legend
     Rgb colour;
     double opacity = 1.0;
     double size_px = 7.0; ///< of a point's circle; width of a line
@@ -75,6 +78,12 @@ Look complete_look(const Layer& layer);
 /// The style of a layer. No colours to be told from the data (no such column, all missing): one
 /// plain symbol.
 LayerStyle make_style(const Layer& layer);
+/// The same for a table whose rows have geometries elsewhere.
+LayerStyle make_style(const Table& table, GeometryKind geometry, const Look& look);
+
+/// The class of colour that a row falls into, if any.
+std::optional<std::size_t> matching_class(const LayerStyle& style, const Table& table,
+                                          std::size_t row);
 
 /// OGC Styled Layer Descriptor 1.1.0 (OGC 05-078r4) with Symbology Encoding 1.1.0 (05-077r4).
 std::string to_sld(const LayerStyle& style);
