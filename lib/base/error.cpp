@@ -7,7 +7,8 @@ namespace {
 std::string joined(const std::vector<std::string>& problems) {
     std::string text;
     for (const auto& problem : problems) {
-        if (!text.empty()) text += '\n';
+        if (!text.empty())
+            text += '\n';
         text += problem;
     }
     return text;
@@ -24,7 +25,8 @@ void Problems::add(const DataError& error) {
 }
 
 void Problems::throw_if_any() const {
-    if (!m_list.empty()) throw DataError{m_list};
+    if (!m_list.empty())
+        throw DataError{m_list};
 }
 
 } // namespace rillstrand

@@ -16,14 +16,14 @@ enum class ColumnKind { real, integer, boolean, text, time, date };
 /// One named column. Times are UTC seconds since 1970-01-01 (written as ISO 8601 with Z), dates
 /// are texts `YYYY-MM-DD`.
 struct Column {
-    std::string name;        ///< attribute name of formats.md
-    std::string title;       ///< what it is, for people: layer and field descriptions
-    std::string unit;        ///< UDUNITS text, empty where there is none
+    std::string name;  ///< attribute name of formats.md
+    std::string title; ///< what it is, for people: layer and field descriptions
+    std::string unit;  ///< UDUNITS text, empty where there is none
     ColumnKind kind = ColumnKind::real;
-    int decimals = -1;       ///< digits after the point in text output; -1: shortest exact form
-    std::vector<double> real;             ///< kinds real and time
-    std::vector<std::int64_t> integer;    ///< kinds integer and boolean (0 or 1)
-    std::vector<std::string> text;        ///< kinds text and date
+    int decimals = -1;        ///< digits after the point in text output; -1: shortest exact form
+    std::vector<double> real; ///< kinds real and time
+    std::vector<std::int64_t> integer; ///< kinds integer and boolean (0 or 1)
+    std::vector<std::string> text;     ///< kinds text and date
 
     std::size_t size() const;
 };
@@ -36,8 +36,8 @@ public:
     const std::string& title() const { return m_title; }
 
     /// Appends a column; every column of a table has the same number of rows.
-    void add_real(std::string name, std::string title, std::string unit,
-                  std::vector<double> values, int decimals = -1);
+    void add_real(std::string name, std::string title, std::string unit, std::vector<double> values,
+                  int decimals = -1);
     void add_integer(std::string name, std::string title, std::vector<std::int64_t> values);
     void add_boolean(std::string name, std::string title, const std::vector<bool>& values);
     void add_text(std::string name, std::string title, std::vector<std::string> values);

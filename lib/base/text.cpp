@@ -11,15 +11,18 @@
 namespace rillstrand::text {
 
 std::string number(double value) {
-    if (std::isnan(value)) return "nan";
-    if (value == 0.0) return "0";
+    if (std::isnan(value))
+        return "nan";
+    if (value == 0.0)
+        return "0";
     std::array<char, 32> buffer{};
     const auto result = std::to_chars(buffer.data(), buffer.data() + buffer.size(), value);
     return {buffer.data(), result.ptr};
 }
 
 std::string fixed(double value, int decimals) {
-    if (std::isnan(value)) return "nan";
+    if (std::isnan(value))
+        return "nan";
     std::array<char, 400> buffer{};
     const auto result = std::to_chars(buffer.data(), buffer.data() + buffer.size(), value,
                                       std::chars_format::fixed, decimals);
@@ -31,8 +34,10 @@ std::string fixed(double value, int decimals) {
 }
 
 std::optional<double> parse_number(std::string_view text) {
-    while (!text.empty() && (text.front() == ' ' || text.front() == '\t')) text.remove_prefix(1);
-    while (!text.empty() && (text.back() == ' ' || text.back() == '\t')) text.remove_suffix(1);
+    while (!text.empty() && (text.front() == ' ' || text.front() == '\t'))
+        text.remove_prefix(1);
+    while (!text.empty() && (text.back() == ' ' || text.back() == '\t'))
+        text.remove_suffix(1);
     if (text.size() > 1 && text.front() == '+' && text[1] != '-' && text[1] != '+')
         text.remove_prefix(1);
     double value = 0.0;
@@ -43,7 +48,8 @@ std::optional<double> parse_number(std::string_view text) {
 }
 
 std::string iso_time(double unix_s) {
-    if (!std::isfinite(unix_s)) return {};
+    if (!std::isfinite(unix_s))
+        return {};
     const double rounded_ms = std::round(unix_s * 1e3);
     const std::chrono::milliseconds since{static_cast<long long>(rounded_ms)};
     const auto days = std::chrono::floor<std::chrono::days>(since);
@@ -68,7 +74,8 @@ std::string slug(std::string_view name) {
     std::string result;
     bool gap = false;
     for (char c : name) {
-        if (c >= 'A' && c <= 'Z') c = static_cast<char>(c - 'A' + 'a');
+        if (c >= 'A' && c <= 'Z')
+            c = static_cast<char>(c - 'A' + 'a');
         if ((c >= 'a' && c <= 'z') || (c >= '0' && c <= '9')) {
             result += c;
             gap = false;
@@ -82,8 +89,10 @@ std::string slug(std::string_view name) {
 
 std::size_t edit_distance(std::string_view a, std::string_view b) {
     std::vector<std::vector<std::size_t>> d(a.size() + 1, std::vector<std::size_t>(b.size() + 1));
-    for (std::size_t i = 0; i <= a.size(); ++i) d[i][0] = i;
-    for (std::size_t j = 0; j <= b.size(); ++j) d[0][j] = j;
+    for (std::size_t i = 0; i <= a.size(); ++i)
+        d[i][0] = i;
+    for (std::size_t j = 0; j <= b.size(); ++j)
+        d[0][j] = j;
     for (std::size_t i = 1; i <= a.size(); ++i) {
         for (std::size_t j = 1; j <= b.size(); ++j) {
             const std::size_t replaced = d[i - 1][j - 1] + (a[i - 1] == b[j - 1] ? 0U : 1U);
@@ -96,7 +105,8 @@ std::size_t edit_distance(std::string_view a, std::string_view b) {
 }
 
 std::string nearest(std::string_view word, const std::vector<std::string>& candidates) {
-    if (word.size() > 200) return {};
+    if (word.size() > 200)
+        return {};
     std::string best;
     std::size_t best_distance = std::max<std::size_t>(2, word.size() / 2) + 1;
     for (const auto& candidate : candidates) {
