@@ -5,7 +5,8 @@ namespace rillstrand::campaign {
 
 const Stretch* Campaign::find_stretch(const std::string& stretch_name) const {
     for (const auto& stretch : stretches)
-        if (stretch.name == stretch_name) return &stretch;
+        if (stretch.name == stretch_name)
+            return &stretch;
     return nullptr;
 }
 

@@ -167,7 +167,7 @@ struct Regime {
 struct KnownInflow {
     std::string label;
     double fibre_m = 0.0;
-    std::optional<SideSeries> temperature;    ///< at most one of the two
+    std::optional<SideSeries> temperature; ///< at most one of the two
     std::optional<std::string> temperature_stretch;
     Where where;
 };
