@@ -10,14 +10,18 @@ namespace rillstrand::geo {
 
 /// A picture to lay under the page's map.
 struct Background {
-    std::vector<std::byte> png; ///< RGBA, rows evenly spaced in spherical Mercator (EPSG:3857)
+    /// WebP (media type image/webp) with opacity, rows evenly spaced in spherical Mercator
+    /// (EPSG:3857).
+    std::vector<std::byte> webp;
     int width = 0;
     int height = 0;
     double west = 0.0, south = 0.0, east = 0.0, north = 0.0; ///< edges, degrees WGS 84
 };
 
 /// Warps a local georeferenced picture (GeoTIFF, PNG, JPEG, JPEG 2000 with a coordinate system) to
-/// spherical Mercator, cut to the part around the cable.
+/// spherical Mercator, cut to the part around the cable. Three bands or more: the first three are
+/// red, green and blue; one: grey, or its colour table. Values of more than 8 bits are stretched to
+/// the range of the part that is shown.
 ///
 /// @param file        only the drivers named above are tried; nothing is fetched
 /// @param around      west, south, east, north of what the map shows, degrees WGS 84

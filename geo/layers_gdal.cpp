@@ -71,7 +71,8 @@ GDALDriver* driver(const std::string& name) {
                                                          {"PNG", GDALRegister_PNG},
                                                          {"JPEG", GDALRegister_JPEG},
                                                          {"JP2OpenJPEG", GDALRegister_JP2OpenJPEG},
-                                                         {"MEM", GDALRegister_MEM}};
+                                                         {"MEM", GDALRegister_MEM},
+        {"WEBP", GDALRegister_WEBP}};
     GDALDriver* found = GetGDALDriverManager()->GetDriverByName(name.c_str());
     if (found == nullptr) {
         if (const auto entry = known.find(name); entry != known.end())
