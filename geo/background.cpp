@@ -5,13 +5,11 @@
 #include "base/text.hpp"
 #include "layers_gdal.hpp"
 
-#include <cpl_vsi.h>
 #include <gdal_alg.h>
 #include <gdal_utils.h>
 
 #include <algorithm>
 #include <cmath>
-#include <cstdint>
 #include <limits>
 #include <memory>
 #include <numbers>
@@ -188,21 +186,17 @@ std::vector<std::byte> to_webp(const Planes& planes, int width, int height,
                                                 height, GDT_Float64, 0, 0, nullptr) != CE_None)
             unusable(file, "cannot be read in full (" + failures.text() + ")");
     }
-    // The address makes the name this call's own: several pictures may be worked on at once.
-    const std::string name = "/vsimem/rillstrand_" +
-                             std::to_string(reinterpret_cast<std::uintptr_t>(rgba.get())) +
-                             ".webp"; // NOLINT
+    const MemoryFile memory{"background.webp"};
     GdalOptions options{"QUALITY=85"};
-    Dataset written{driver("WEBP")->CreateCopy(name.c_str(), rgba.get(), FALSE, options.get(),
-                                               nullptr, nullptr)};
+    Dataset written{driver("WEBP")->CreateCopy(memory.name().c_str(), rgba.get(), FALSE,
+                                               options.get(), nullptr, nullptr)};
     if (!written)
         unusable(file, "cannot be packed for the page (" + failures.text() + ")");
     written.reset();
-    vsi_l_offset size = 0;
-    const GByte* bytes = VSIGetMemFileBuffer(name.c_str(), &size, FALSE);
-    std::vector<std::byte> result(static_cast<std::size_t>(size));
-    std::transform(bytes, bytes + size, result.begin(), [](GByte b) { return std::byte{b}; });
-    VSIUnlink(name.c_str());
+    const std::string bytes = memory.content();
+    std::vector<std::byte> result(bytes.size());
+    std::transform(bytes.begin(), bytes.end(), result.begin(),
+                   [](char c) { return static_cast<std::byte>(c); });
     return result;
 }
 } // namespace

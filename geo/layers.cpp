@@ -195,6 +195,8 @@ void write_format(const Job& job, campaign::LayerFormat format, WrittenLayers& w
 WrittenLayers write_layers(const LayerSet& set, const std::vector<campaign::LayerFormat>& formats,
                            const std::filesystem::path& folder) {
     writing::Job job{&set, writing::named_layers(set), folder};
+    if (!set.crs.empty())
+        (void)coordinate_system(set.crs); // refused before anything is written
     if (std::any_of(formats.begin(), formats.end(), writing::needs_lon_lat))
         writing::add_lon_lat(job);
     std::error_code error;

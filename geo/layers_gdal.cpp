@@ -5,9 +5,11 @@
 
 #include <cpl_conv.h>
 #include <cpl_error.h>
+#include <cpl_vsi.h>
 #include <gdal_frmts.h>
 #include <ogrsf_frmts.h>
 
+#include <functional>
 #include <map>
 #include <mutex>
 
@@ -59,6 +61,26 @@ GdalOption::~GdalOption() {
     CPLSetThreadLocalConfigOption(m_key.c_str(), m_was_set ? m_before.c_str() : nullptr);
 }
 
+MemoryFile::MemoryFile(const std::string& ending) {
+    // The object's address tells apart the files of threads at work at the same time.
+    m_name = "/vsimem/rillstrand_" +
+             std::to_string(std::hash<const void*>{}(static_cast<const void*>(this))) + "_" +
+             ending;
+}
+
+MemoryFile::~MemoryFile() {
+    VSIUnlink(m_name.c_str());
+}
+
+std::string MemoryFile::content() const {
+    vsi_l_offset size = 0;
+    const GByte* bytes = VSIGetMemFileBuffer(m_name.c_str(), &size, FALSE);
+    std::string text;
+    if (bytes != nullptr)
+        text.assign(bytes, bytes + size);
+    return text;
+}
+
 GDALDriver* driver(const std::string& name) {
     static std::mutex guard; // GDAL's registry is the process's; registering twice is harmless
     const std::lock_guard lock{guard};
@@ -72,7 +94,7 @@ GDALDriver* driver(const std::string& name) {
                                                          {"JPEG", GDALRegister_JPEG},
                                                          {"JP2OpenJPEG", GDALRegister_JP2OpenJPEG},
                                                          {"MEM", GDALRegister_MEM},
-        {"WEBP", GDALRegister_WEBP}};
+                                                         {"WEBP", GDALRegister_WEBP}};
     GDALDriver* found = GetGDALDriverManager()->GetDriverByName(name.c_str());
     if (found == nullptr) {
         if (const auto entry = known.find(name); entry != known.end())

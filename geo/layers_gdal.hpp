@@ -56,6 +56,24 @@ struct CloseDataset {
 };
 using Dataset = std::unique_ptr<GDALDataset, CloseDataset>;
 
+/// A file in GDAL's memory, under a name of its own, gone at the end.
+class MemoryFile {
+public:
+    /// @param ending  the end of its name, by which drivers know it
+    explicit MemoryFile(const std::string& ending);
+    ~MemoryFile();
+    MemoryFile(const MemoryFile&) = delete;
+    MemoryFile& operator=(const MemoryFile&) = delete;
+    MemoryFile(MemoryFile&&) = delete;
+    MemoryFile& operator=(MemoryFile&&) = delete;
+
+    const std::string& name() const { return m_name; }
+    std::string content() const;
+
+private:
+    std::string m_name;
+};
+
 /// A driver by name, registered if need be; only those that this room writes with are known.
 GDALDriver* driver(const std::string& name);
 

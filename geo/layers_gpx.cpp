@@ -7,7 +7,6 @@
 #include <ogrsf_frmts.h>
 
 #include <cmath>
-#include <system_error>
 
 namespace rillstrand::geo::writing {
 
@@ -114,18 +113,19 @@ void fill(GDALDataset& file, const Job& job, const GdalFailures& failures) {
 }
 } // namespace
 
-// GPX 1.1: findings as waypoints, the cable as tracks.
+// GPX 1.1: findings as waypoints, the cable as tracks. The library's writer of this format does not
+// notice a full disk, so it writes to memory (findings are few) and the file is written here.
 void write_gpx(const Job& job, WrittenLayers& written) {
     const auto path = job.folder / "findings.gpx";
-    std::error_code ignored;
-    std::filesystem::remove(path, ignored);
+    const MemoryFile memory{"findings.gpx"};
     const GdalFailures failures;
-    Dataset file{driver("GPX")->Create(path.c_str(), 0, 0, 0, GDT_Unknown, nullptr)};
+    Dataset file{driver("GPX")->Create(memory.name().c_str(), 0, 0, 0, GDT_Unknown, nullptr)};
     if (!file)
         failures.give_up(path);
     fill(*file, job, failures);
     file.reset();
     failures.throw_if_any(path);
+    write_text(path, memory.content());
     written.files.emplace_back("findings.gpx");
 }
 
