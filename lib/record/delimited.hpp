@@ -1,0 +1,33 @@
+// SPDX-License-Identifier: Apache-2.0
+#pragma once
+
+#include <filesystem>
+#include <optional>
+#include <string>
+#include <vector>
+
+namespace rillstrand::record {
+
+/// A small delimited text table with a header, all in memory: tie points, control points, side
+/// series. Delimiter and decimal comma are told from the file; lines that begin with # are
+/// comments.
+struct Delimited {
+    std::filesystem::path file;
+    std::vector<std::string> header;
+    std::vector<std::vector<std::string>> rows; ///< each as long as the header
+    std::vector<std::size_t> lines;             ///< line number of each row
+    bool decimal_comma = false;
+
+    /// Position of a column by its name, without regard to capitals and blanks around.
+    std::optional<std::size_t> column(const std::string& name) const;
+    /// `file:line`
+    std::string place(std::size_t row) const;
+    /// The number in a cell; nothing where the cell is empty, `nan` or `NA`.
+    /// @throws DataError with file, line and text if it is anything else
+    std::optional<double> number(std::size_t row, std::size_t cell) const;
+};
+
+/// @throws DataError if the file is missing, empty, no text, larger than 1 GB, or a row is ragged
+Delimited read_delimited(const std::filesystem::path& file);
+
+} // namespace rillstrand::record
