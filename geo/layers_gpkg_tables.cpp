@@ -2,6 +2,7 @@
 #include "layers_gpkg_tables.hpp"
 
 #include "base/text.hpp"
+#include "layers_rtree.hpp"
 
 #include <algorithm>
 
@@ -216,8 +217,22 @@ std::vector<std::string> description_statements(const Job& job) {
 }
 
 std::vector<std::string> index_statements(const Named& named) {
-    return {"SELECT CreateSpatialIndex(" + sql_text(named.name) + ", " +
-            sql_text(free_name(named.table(), "geom")) + ")"};
+    std::vector<BoxedRow> rows;
+    const auto& vertices = named.layer->vertices;
+    for (std::size_t i = 0; i < vertices.size(); ++i) {
+        if (is_missing(*named.layer, vertices[i]))
+            continue;
+        BoxedRow row{
+            static_cast<std::int64_t>(i) + 1,
+            {vertices[i][0].x(), vertices[i][0].x(), vertices[i][0].y(), vertices[i][0].y()}};
+        if (named.layer->geometry == GeometryKind::line_string_z)
+            for (const auto& v : vertices[i])
+                row.box = {std::min(row.box[0], v.x()), std::max(row.box[1], v.x()),
+                           std::min(row.box[2], v.y()), std::max(row.box[3], v.y())};
+        rows.push_back(row);
+    }
+    return tree_statements(named.name, free_name(named.table(), "geom"),
+                           free_name(named.table(), "fid"), rows);
 }
 
 std::vector<std::string> view_statements(const Job& job) {
