@@ -5,6 +5,7 @@
 
 #include <algorithm>
 #include <array>
+#include <charconv>
 #include <cmath>
 #include <cstdio>
 
@@ -39,6 +40,16 @@ double round_step(double width) {
     return 10.0 * power;
 }
 
+/// The decimal number that a product of steps stands for: 3 times 0.025 is 0.075 and no more.
+double tidy(double value) {
+    std::array<char, 64> buffer{};
+    const auto text = std::to_chars(buffer.data(), buffer.data() + buffer.size(), value,
+                                    std::chars_format::scientific, 11);
+    double result = value;
+    (void)std::from_chars(buffer.data(), text.ptr, result);
+    return result;
+}
+
 double quantile(const std::vector<double>& sorted, double share) {
     const double place = share * static_cast<double>(sorted.size() - 1);
     const auto below = static_cast<std::size_t>(place);
@@ -51,7 +62,7 @@ std::vector<double> round_limits(double low, double high, int count) {
         std::vector<double> limits{low};
         for (double k = std::floor(low / step) + 1.0; k * step < high; k += 1.0)
             if (k * step > low)
-                limits.push_back(k * step);
+                limits.push_back(tidy(k * step));
         limits.push_back(high);
         if (limits.size() <= static_cast<std::size_t>(count) + 1)
             return limits;
@@ -89,7 +100,7 @@ std::vector<double> diverging_limits(const std::vector<double>& sorted, int coun
     const double width = round_step(2.0 * usual / odd);
     std::vector<double> limits;
     for (int i = 1; i < odd; ++i)
-        limits.push_back((i - 0.5 * odd) * width);
+        limits.push_back(tidy((i - 0.5 * odd) * width));
     const double end = std::max(sizes.back(), 0.5 * odd * width);
     limits.insert(limits.begin(), -end);
     limits.push_back(end);

@@ -131,7 +131,7 @@ std::string qml_time(const LayerStyle& style) {
         return {};
     return std::string{"<temporal enabled=\"1\" mode=\"1\" startField=\""} + xml(style.time_by) +
            "\" endField=\"\" durationField=\"\" durationUnit=\"" +
-           (style.time_is_date ? "days" : "min") + "\" fixedDuration=\"" +
+           (style.time_is_date ? "d" : "min") + "\" fixedDuration=\"" +
            (style.time_is_date ? "1" : "0") +
            "\" accumulate=\"0\" startExpression=\"\" endExpression=\"\" limitMode=\"0\">"
            "<fixedRange><start></start><end></end></fixedRange></temporal>\n";
