@@ -53,10 +53,10 @@ Dataset open_picture(const std::filesystem::path& file, const GdalFailures& fail
         unusable(file, "is not a file");
     for (const char* name : {"GTiff", "PNG", "JPEG", "JP2OpenJPEG"})
         (void)driver(name);
-    const char* const drivers[] = {"GTiff", "PNG", "JPEG", "JP2OpenJPEG", nullptr};
+    constexpr std::array<const char*, 5> drivers{"GTiff", "PNG", "JPEG", "JP2OpenJPEG", nullptr};
     const auto absolute = std::filesystem::absolute(file);
-    Dataset picture{GDALDataset::Open(absolute.c_str(), GDAL_OF_RASTER | GDAL_OF_READONLY, drivers,
-                                      nullptr, nullptr)};
+    Dataset picture{GDALDataset::Open(absolute.c_str(), GDAL_OF_RASTER | GDAL_OF_READONLY,
+                                      drivers.data(), nullptr, nullptr)};
     if (!picture)
         unusable(file, "cannot be read (" + failures.text() + ")");
     if (picture->GetSpatialRef() == nullptr)

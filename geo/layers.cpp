@@ -104,6 +104,10 @@ std::vector<Named> named_layers(const LayerSet& set) {
                          " has positions but no coordinate system; give crs in [placement]");
         list.push_back(std::move(named));
     }
+    for (const auto& view : set.views)
+        if (!names.insert(text::slug(view.name)).second)
+            problems.add("a view is named like a layer or another view: " + text::slug(view.name) +
+                         "; give it another name");
     problems.throw_if_any();
     return list;
 }

@@ -45,15 +45,20 @@ Layer table_layer(Table table);
 Layer point_layer(Table table, GeometryKind kind, const std::vector<double>& x,
                   const std::vector<double>& y, const std::vector<double>& z = {});
 
-/// A spatial view: the rows of a table without geometry on the points of a layer, by day, so that a
-/// temporal player of a GIS program can run through them. Written to the GeoPackage only.
+/// A spatial view: the rows of a table without geometry on the points of a layer, by time, so that
+/// a temporal player of a GIS program can run through them. Written to the GeoPackage only, and
+/// only where both layers are there and the second one has positions.
+///
+/// Snow: table `snow_daily`, points `snow_channels`, key `fibre_m`, no place. A column: table
+/// `column_mast`, points a layer with a row a column, key the column of its names, place the name.
 struct TimeView {
-    std::string name; ///< of the view, e.g. `snow_daily_map`
+    std::string name; ///< of the view, e.g. `snow_daily_map`; no layer has it
     std::string title;
-    std::string table;  ///< a layer without geometry, e.g. `snow_daily`
-    std::string points; ///< a point layer, e.g. `snow_channels`
-    std::string key;    ///< column that both have and that tells one point, e.g. `fibre_m`
-    Look look;          ///< names of columns of `table`
+    std::string table;   ///< a layer without geometry
+    std::string points;  ///< a point layer
+    std::string key;     ///< column that tells one point; the table has it too, but for `place`
+    Look look;           ///< names of columns of `table`
+    std::string place{}; ///< where every row of the table belongs to one point: its value of `key`
 };
 
 /// All that a campaign hands to a GIS program.

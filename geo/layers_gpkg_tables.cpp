@@ -39,7 +39,7 @@ std::string free_name(const Table& table, const std::string& wanted) {
                            [&](const Column& c) { return text::slug(c.name) == name; });
     };
     while (taken())
-        name = "row_" + name;
+        name.insert(0, "row_");
     return name;
 }
 
@@ -80,7 +80,9 @@ std::vector<UsableView> usable_views(const Job& job) {
         const Named* points = find_layer(job, view.points);
         if (table == nullptr || points == nullptr || !points->has_geometry())
             continue;
-        if (table->table().find(view.key) == nullptr || points->table().find(view.key) == nullptr)
+        if (points->table().find(view.key) == nullptr)
+            continue;
+        if (view.place.empty() && table->table().find(view.key) == nullptr)
             continue;
         list.push_back({&view, table, points, text::slug(view.name)});
     }
@@ -235,36 +237,44 @@ std::vector<std::string> index_statements(const Named& named) {
                            free_name(named.table(), "fid"), rows);
 }
 
+namespace {
+std::string create_view(const UsableView& view) {
+    const std::string key = sql_name(view.view->key);
+    std::string columns;
+    for (const auto& column : view.table->table().columns()) {
+        columns += ", t.";
+        columns += sql_name(column.name);
+    }
+    const std::string same = view.view->place.empty() ? "t." + key : sql_text(view.view->place);
+    // The first column is what GIS programs take for the row's number.
+    return joined({"CREATE VIEW ", sql_name(view.name), " AS SELECT t.",
+                   sql_name(free_name(view.table->table(), "fid")), " AS OGC_FID, p.",
+                   sql_name(free_name(view.points->table(), "geom")), columns, " FROM ",
+                   sql_name(view.table->name), " AS t JOIN ", sql_name(view.points->name),
+                   " AS p ON p.", key, " = ", same});
+}
+} // namespace
+
 std::vector<std::string> view_statements(const Job& job) {
     std::vector<std::string> sql;
     for (const auto& view : usable_views(job)) {
-        const std::string rows = sql_name(view.table->name);
-        const std::string places = sql_name(view.points->name);
-        const std::string key = sql_name(view.view->key);
-        const std::string geom = sql_name(free_name(view.points->table(), "geom"));
-        sql.push_back("CREATE INDEX " + sql_name(view.name + "_places") + " ON " + places + " (" +
-                      key + ")");
-        std::string columns;
-        for (const auto& column : view.table->table().columns())
-            columns += ", t." + sql_name(column.name);
-        // The first column is what GIS programs take for the row's number.
-        sql.push_back("CREATE VIEW " + sql_name(view.name) + " AS SELECT t." +
-                      sql_name(free_name(view.table->table(), "fid")) + " AS OGC_FID, p." + geom +
-                      columns + " FROM " + rows + " AS t JOIN " + places + " AS p ON p." + key +
-                      " = t." + key);
+        const std::string points = sql_text(view.points->name);
+        sql.push_back(joined({"CREATE INDEX ", sql_name(view.name + "_places"), " ON ",
+                              sql_name(view.points->name), " (", sql_name(view.view->key), ")"}));
+        sql.push_back(create_view(view));
         sql.push_back(
-            "INSERT INTO gpkg_contents (table_name, data_type, identifier, description, "
-            "last_change, min_x, min_y, max_x, max_y, srs_id) SELECT " +
-            sql_text(view.name) + ", 'features', " + sql_text(view.name) + ", " +
-            sql_text(view.view->title) + ", " + sql_text(with_milliseconds(job.set->now)) +
-            ", min_x, min_y, max_x, max_y, srs_id FROM gpkg_contents WHERE table_name = " +
-            sql_text(view.points->name));
-        sql.push_back("INSERT INTO gpkg_geometry_columns (table_name, column_name, "
-                      "geometry_type_name, srs_id, z, m) SELECT " +
-                      sql_text(view.name) +
-                      ", column_name, geometry_type_name, srs_id, z, m FROM "
-                      "gpkg_geometry_columns WHERE table_name = " +
-                      sql_text(view.points->name));
+            joined({"INSERT INTO gpkg_contents (table_name, data_type, identifier, description, "
+                    "last_change, min_x, min_y, max_x, max_y, srs_id) SELECT ",
+                    sql_text(view.name), ", 'features', ", sql_text(view.name), ", ",
+                    sql_text(view.view->title), ", ", sql_text(with_milliseconds(job.set->now)),
+                    ", min_x, min_y, max_x, max_y, srs_id FROM gpkg_contents WHERE table_name = ",
+                    points}));
+        sql.push_back(joined({"INSERT INTO gpkg_geometry_columns (table_name, column_name, "
+                              "geometry_type_name, srs_id, z, m) SELECT ",
+                              sql_text(view.name),
+                              ", column_name, geometry_type_name, srs_id, z, m FROM "
+                              "gpkg_geometry_columns WHERE table_name = ",
+                              points}));
     }
     return sql;
 }

@@ -92,10 +92,11 @@ std::string styles(const Named& named, const LayerStyle& style) {
     std::string text;
     for (std::size_t i = 0; i < style.classes.size(); ++i) {
         const std::string colour = kml_colour(style.classes[i].colour);
-        text += "<Style id=\"" + style_id(named, i) + "\"><IconStyle><color>" + colour +
-                "</color><scale>0.6</scale></IconStyle><LabelStyle><scale>0</scale></LabelStyle>"
-                "<LineStyle><color>" +
-                colour + "</color><width>3</width></LineStyle></Style>\n";
+        text += joined(
+            {"<Style id=\"", style_id(named, i), "\"><IconStyle><color>", colour,
+             "</color><scale>0.6</scale></IconStyle><LabelStyle><scale>0</scale></LabelStyle>"
+             "<LineStyle><color>",
+             colour, "</color><width>3</width></LineStyle></Style>\n"});
     }
     return text;
 }

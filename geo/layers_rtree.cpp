@@ -153,6 +153,7 @@ void add_triggers(std::vector<std::string>& sql, const std::string& table,
 
 PackedTree pack_tree(const std::vector<BoxedRow>& rows) {
     std::vector<Cell> cells;
+    cells.reserve(rows.size());
     for (const auto& row : rows)
         cells.push_back({row.row,
                          {not_above(row.box[0]), not_below(row.box[1]), not_above(row.box[2]),

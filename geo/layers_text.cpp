@@ -69,6 +69,13 @@ void write_text(const std::filesystem::path& file, const std::string& text) {
     });
 }
 
+std::string joined(std::initializer_list<std::string_view> pieces) {
+    std::string text;
+    for (const auto piece : pieces)
+        text += piece;
+    return text;
+}
+
 std::string utf8(std::string_view text) {
     std::string result;
     result.reserve(text.size());

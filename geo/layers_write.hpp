@@ -6,6 +6,7 @@
 
 #include <filesystem>
 #include <functional>
+#include <initializer_list>
 #include <string>
 #include <string_view>
 #include <vector>
@@ -46,6 +47,9 @@ void write_text(const std::filesystem::path& file, const std::string& text);
 /// @param fill  called with a function that takes the next piece
 void write_pieces(const std::filesystem::path& file,
                   const std::function<void(const std::function<void(std::string&)>&)>& fill);
+
+/// The pieces one after the other.
+std::string joined(std::initializer_list<std::string_view> pieces);
 
 /// Well-formed UTF-8: every byte that is none becomes the replacement character.
 std::string utf8(std::string_view text);

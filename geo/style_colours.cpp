@@ -91,6 +91,7 @@ bool is_lopsided(const std::vector<double>& sorted, const std::vector<double>& l
 std::vector<double> diverging_limits(const std::vector<double>& sorted, int count) {
     const int odd = count % 2 == 0 ? count - 1 : count;
     std::vector<double> sizes;
+    sizes.reserve(sorted.size());
     for (const double v : sorted)
         sizes.push_back(std::abs(v));
     std::sort(sizes.begin(), sizes.end());
@@ -132,6 +133,7 @@ Rgb rgb_from_lab(double lightness, double a, double b) {
 
 std::vector<Rgb> sequential_colours(int count) {
     std::vector<Rgb> colours;
+    colours.reserve(static_cast<std::size_t>(std::max(count, 0)));
     for (int i = 0; i < count; ++i)
         colours.push_back(between(ramp_dark, ramp_light, count == 1 ? 0.5 : 1.0 * i / (count - 1)));
     return colours;
@@ -139,6 +141,7 @@ std::vector<Rgb> sequential_colours(int count) {
 
 std::vector<Rgb> diverging_colours(int count) {
     std::vector<Rgb> colours;
+    colours.reserve(static_cast<std::size_t>(std::max(count, 0)));
     for (int i = 0; i < count; ++i) {
         const double place = count == 1 ? 0.0 : 2.0 * i / (count - 1) - 1.0;
         colours.push_back(between(at_zero, place < 0.0 ? below_zero : above_zero, std::abs(place)));
@@ -156,6 +159,7 @@ std::vector<Rgb> categorical_colours(int count) {
                                           {240, 228, 66},
                                           {0, 0, 0}}};
     std::vector<Rgb> colours;
+    colours.reserve(static_cast<std::size_t>(std::max(count, 0)));
     for (int i = 0; i < count; ++i)
         colours.push_back(palette.at(static_cast<std::size_t>(i) % palette.size()));
     return colours;

@@ -6,6 +6,7 @@
 namespace rillstrand::geo {
 
 namespace {
+using writing::joined;
 using writing::xml;
 
 constexpr double mm_per_px = 0.28; // the standard pixel of OGC 05-077r4
@@ -100,17 +101,23 @@ std::string qml_colour(Rgb colour) {
            std::to_string(colour.b) + ",255";
 }
 
+/// ` name="value"`.
+std::string attribute(const char* name, const std::string& value) {
+    return joined({" ", name, "=\"", xml(value), "\""});
+}
+
 std::string property(const char* key, const std::string& value) {
     return std::string{"<prop k=\""} + key + "\" v=\"" + xml(value) + "\"/>";
 }
 
 std::string qml_symbol(const LayerStyle& style, const StyleRule& rule, std::size_t number) {
     const bool line = is_line(style);
-    std::string text = std::string{"<symbol type=\""} + (line ? "line" : "marker") + "\" name=\"" +
-                       std::to_string(number) + "\" alpha=\"" + text::number(rule.opacity) +
-                       "\" clip_to_extent=\"1\" force_rhr=\"0\"><layer class=\"" +
-                       (line ? "SimpleLine" : "SimpleMarker") +
-                       "\" enabled=\"1\" locked=\"0\" pass=\"" + (rule.outline ? "1" : "0") + "\">";
+    std::string text = joined(
+        {"<symbol", attribute("type", line ? "line" : "marker"),
+         attribute("name", std::to_string(number)), attribute("alpha", text::number(rule.opacity)),
+         attribute("clip_to_extent", "1"), attribute("force_rhr", "0"), "><layer",
+         attribute("class", line ? "SimpleLine" : "SimpleMarker"), attribute("enabled", "1"),
+         attribute("locked", "0"), attribute("pass", rule.outline ? "1" : "0"), ">"});
     const std::string size = text::fixed(rule.size_px * mm_per_px, 2);
     if (line) {
         text += property("line_color", qml_colour(rule.colour)) + property("line_width", size) +
@@ -129,12 +136,14 @@ std::string qml_symbol(const LayerStyle& style, const StyleRule& rule, std::size
 std::string qml_time(const LayerStyle& style) {
     if (style.time_by.empty())
         return {};
-    return std::string{"<temporal enabled=\"1\" mode=\"1\" startField=\""} + xml(style.time_by) +
-           "\" endField=\"\" durationField=\"\" durationUnit=\"" +
-           (style.time_is_date ? "d" : "min") + "\" fixedDuration=\"" +
-           (style.time_is_date ? "1" : "0") +
-           "\" accumulate=\"0\" startExpression=\"\" endExpression=\"\" limitMode=\"0\">"
-           "<fixedRange><start></start><end></end></fixedRange></temporal>\n";
+    return joined({"<temporal", attribute("enabled", "1"), attribute("mode", "1"),
+                   attribute("startField", style.time_by), attribute("endField", ""),
+                   attribute("durationField", ""),
+                   attribute("durationUnit", style.time_is_date ? "d" : "min"),
+                   attribute("fixedDuration", style.time_is_date ? "1" : "0"),
+                   attribute("accumulate", "0"), attribute("startExpression", ""),
+                   attribute("endExpression", ""), attribute("limitMode", "0"),
+                   "><fixedRange><start></start><end></end></fixedRange></temporal>\n"});
 }
 } // namespace
 
@@ -164,9 +173,10 @@ std::string to_qml(const LayerStyle& style) {
         // Halos stand in a group of their own, so that 'otherwise' looks at the classes alone.
         if (i == 0 && !style.halos.empty())
             rule_list += "<rule key=\"halos\" label=\"uncertainty\">\n";
-        rule_list += "<rule key=\"rule" + number + "\" symbol=\"" + number + "\"" +
-                     (filter.empty() ? "" : " filter=\"" + xml(filter) + "\"") + " label=\"" +
-                     xml(rules[i].label) + "\"/>\n";
+        rule_list +=
+            joined({"<rule", attribute("key", "rule" + number), attribute("symbol", number),
+                    filter.empty() ? "" : attribute("filter", filter),
+                    attribute("label", rules[i].label), "/>\n"});
         if (i + 1 == style.halos.size())
             rule_list += "</rule>\n<rule key=\"classes\">\n";
         symbols += qml_symbol(style, rules[i], i);

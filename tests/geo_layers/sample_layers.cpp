@@ -65,6 +65,15 @@ Layer column() {
 }
 } // namespace
 
+namespace {
+Layer masts() {
+    Table table{"columns"};
+    table.add_text("name", "name of the column", {"Mast A", "Mast B"});
+    return point_layer(std::move(table), GeometryKind::point, {512400.0, 512500.0},
+                       {5278000.0, 5278100.0});
+}
+} // namespace
+
 LayerSet layer_set() {
     LayerSet set;
     set.crs = "EPSG:25832";
@@ -75,13 +84,16 @@ LayerSet layer_set() {
     set.keywords = {"stream temperature", "fibre <optics>"};
     set.provenance = "rillstrand; campaign.toml 0123'abc";
     set.now = "2031-07-01T12:00:00Z";
-    set.layers = {channels(), cable(), inflows(), snow_channels(), snow_daily(), column()};
-    set.views = {{"snow_daily_map",
-                  "Snow by day and channel",
-                  "snow_daily",
-                  "snow_channels",
-                  "fibre_m",
-                  {"state", "", "date", "", false, false}}};
+    set.layers = {channels(), cable(), inflows(), snow_channels(), snow_daily(), column(), masts()};
+    set.views = {
+        {"snow_daily_map",
+         "Snow by day and channel",
+         "snow_daily",
+         "snow_channels",
+         "fibre_m",
+         {"state", "", "date", "", false, false},
+         ""},
+        {"column_mast_a_map", "Column in time", "column_Mast A", "columns", "name", {}, "Mast A"}};
     return set;
 }
 

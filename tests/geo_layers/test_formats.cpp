@@ -87,6 +87,11 @@ TEST_CASE("a temporal view joins days and points", "[layers][property]") {
     REQUIRE(last != nullptr);
     CHECK(std::string{last->GetFieldAsString("state")} == "unknown");
     CHECK(last->GetGeometryRef()->toPoint()->getX() == 512349.5);
+    OGRLayer* column = file->GetLayerByName("column_mast_a_map");
+    REQUIRE(column != nullptr);
+    REQUIRE(column->GetFeatureCount() == 2);
+    while (const std::unique_ptr<OGRFeature> row{column->GetNextFeature()})
+        CHECK(row->GetGeometryRef()->toPoint()->getX() == 512400.0);
 }
 
 TEST_CASE("fields and layers of a GeoPackage are described", "[layers][property]") {
@@ -111,7 +116,7 @@ TEST_CASE("fields and layers of a GeoPackage are described", "[layers][property]
     CHECK(metadata.find("<script>") == std::string::npos);
     CHECK(ask("SELECT '' || last_change FROM gpkg_contents WHERE table_name = 'cable'") ==
           "2031-07-01T12:00:00.000Z");
-    CHECK(ask("SELECT count(*) FROM layer_styles WHERE useAsDefault = 1") == "5");
+    CHECK(ask("SELECT count(*) FROM layer_styles WHERE useAsDefault = 1") == "7");
 }
 
 // Checks G-70: POINT(6 49.7), EPSG:4326, built by hand from OGC 12-128, clause 2.1.3.
