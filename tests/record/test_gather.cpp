@@ -14,7 +14,7 @@ using Catch::Matchers::Contains;
 
 namespace {
 
-constexpr double start_s = 1932703200.0; // 2031-03-31T02:00:00Z
+constexpr double start_s = 22369.0 * 86400.0 + 7200.0; // 2031-03-31T02:00:00Z
 
 /// The small record that every variant below says in another way.
 const std::vector<double> distances{0.5, 1.0, 1.5};
@@ -216,8 +216,8 @@ TEST_CASE("one record in all its variants gives one matrix", "[record]") {
         KeepSink sink;
         const auto report = gather(options, folder, sink).first;
         REQUIRE(sink.times_s.size() == 2);
-        CHECK(sink.times_s[0] == Approx(start_s).margin(1e-6));
-        CHECK(sink.times_s[1] == Approx(start_s + 300.0).margin(1e-6));
+        CHECK(std::abs(sink.times_s[0] - start_s) < 1e-6);
+        CHECK(std::abs(sink.times_s[1] - start_s - 300.0) < 1e-6);
         CHECK(report.interval_s == Approx(300.0));
         REQUIRE(sink.head.distance_m.size() == 3);
         for (Eigen::Index j = 0; j < 3; ++j) {
