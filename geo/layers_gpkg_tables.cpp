@@ -90,7 +90,7 @@ std::vector<UsableView> usable_views(const Job& job) {
 }
 
 Look view_look(const UsableView& view) {
-    Look look = view.view->look;
+    Look look = complete_look(view.table->table(), view.view->look);
     for (const auto& column : view.table->table().columns())
         if (look.time_by.empty() &&
             (column.kind == ColumnKind::date || column.kind == ColumnKind::time))
@@ -261,6 +261,10 @@ std::vector<std::string> view_statements(const Job& job) {
         const std::string points = sql_text(view.points->name);
         sql.push_back(joined({"CREATE INDEX ", sql_name(view.name + "_places"), " ON ",
                               sql_name(view.points->name), " (", sql_name(view.view->key), ")"}));
+        // A temporal player asks for one day after the other.
+        if (const std::string time = view_look(view).time_by; !time.empty())
+            sql.push_back(joined({"CREATE INDEX ", sql_name(view.name + "_times"), " ON ",
+                                  sql_name(view.table->name), " (", sql_name(time), ")"}));
         sql.push_back(create_view(view));
         sql.push_back(
             joined({"INSERT INTO gpkg_contents (table_name, data_type, identifier, description, "

@@ -62,11 +62,8 @@ void write_pieces(const std::filesystem::path& file,
         cannot_write(file, errno);
 }
 
-void write_text(const std::filesystem::path& file, const std::string& text) {
-    write_pieces(file, [&](const std::function<void(std::string&)>& next) {
-        std::string piece = text;
-        next(piece);
-    });
+void write_text(const std::filesystem::path& file, std::string text) {
+    write_pieces(file, [&](const std::function<void(std::string&)>& next) { next(text); });
 }
 
 std::string joined(std::initializer_list<std::string_view> pieces) {

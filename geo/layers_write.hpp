@@ -41,7 +41,7 @@ bool has_unknown_height(const Layer& layer);
 
 /// A text file written, closed and checked.
 /// @throws MachineError naming it
-void write_text(const std::filesystem::path& file, const std::string& text);
+void write_text(const std::filesystem::path& file, std::string text);
 
 /// A text file written piece by piece: more than fits in memory at once is no trouble.
 /// @param fill  called with a function that takes the next piece

@@ -63,6 +63,7 @@ Habit habit_of(const std::string& layer) {
         {"inflows",
          {{"fraction", "contrast_c"}, {"fraction_sd", "temperature_sd_c"}, {"kind"}, true}},
         {"stream_channels", {{"anomaly_c"}, {"position_sd_m"}, {}}},
+        {"snow_daily", {{"state"}, {}, {}}},
         {"snow_channels", {{"covered_days", "mean_probability"}, {"melt_out_sd_d"}, {}}}};
     const auto found = habits.find(layer);
     return found == habits.end() ? Habit{} : found->second;
@@ -160,9 +161,11 @@ std::vector<StyleRule> halo_rules(const Column& column) {
 } // namespace
 
 Look complete_look(const Layer& layer) {
-    const Table& table = layer.table;
+    return complete_look(layer.table, layer.look);
+}
+
+Look complete_look(const Table& table, Look look) {
     const Habit habit = habit_of(text::slug(table.name()));
-    Look look = layer.look;
     if (!is_named(look.colour_by, table))
         look.colour_by = first_of(table, habit.colour_by);
     if (look.colour_by.empty())

@@ -74,6 +74,8 @@ struct LayerStyle {
 /// What a layer of this name is best coloured by, as far as its columns allow; anything that
 /// `layer.look` names stands.
 Look complete_look(const Layer& layer);
+/// The same for a table whose rows have geometries elsewhere.
+Look complete_look(const Table& table, Look look);
 
 /// The style of a layer. No colours to be told from the data (no such column, all missing): one
 /// plain symbol.

@@ -87,6 +87,15 @@ TEST_CASE("a temporal view joins days and points", "[layers][property]") {
     REQUIRE(last != nullptr);
     CHECK(std::string{last->GetFieldAsString("state")} == "unknown");
     CHECK(last->GetGeometryRef()->toPoint()->getX() == 512349.5);
+    OGRLayer* plan = file->ExecuteSQL(
+        "EXPLAIN QUERY PLAN SELECT * FROM snow_daily_map WHERE date = '2031-04-05'", nullptr,
+        nullptr);
+    REQUIRE(plan != nullptr); // a day is found by an index, not by reading every row
+    std::string steps;
+    while (const std::unique_ptr<OGRFeature> step{plan->GetNextFeature()})
+        steps += std::string{step->GetFieldAsString("detail")} + "; ";
+    file->ReleaseResultSet(plan);
+    CHECK(steps.find("SEARCH t USING INDEX snow_daily_map_times") != std::string::npos);
     OGRLayer* column = file->GetLayerByName("column_mast_a_map");
     REQUIRE(column != nullptr);
     REQUIRE(column->GetFeatureCount() == 2);
