@@ -11,7 +11,6 @@
 
 #include <functional>
 #include <map>
-#include <mutex>
 
 namespace rillstrand::geo {
 
@@ -82,8 +81,7 @@ std::string MemoryFile::content() const {
 }
 
 GDALDriver* driver(const std::string& name) {
-    static std::mutex guard; // GDAL's registry is the process's; registering twice is harmless
-    const std::lock_guard lock{guard};
+    // The registry is GDAL's and locks itself; registering a driver twice leaves the first one.
     static const std::map<std::string, void (*)()> known{{"GPKG", RegisterOGRGeoPackage},
                                                          {"FlatGeobuf", RegisterOGRFlatGeobuf},
                                                          {"GPX", RegisterOGRGPX},

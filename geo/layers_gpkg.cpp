@@ -67,7 +67,7 @@ void add_styles(GDALDataset& file, const Job& job) {
         row.SetField("styleQML", to_qml(style.style).c_str());
         row.SetField("styleSLD", to_sld(style.style).c_str());
         row.SetField("useAsDefault", 1);
-        row.SetField("description", style.style.title.c_str());
+        row.SetField("description", utf8(style.style.title).c_str());
         row.SetField("owner", "");
         row.SetField("update_time", job.set->now.c_str());
         if (layer->CreateFeature(&row) != OGRERR_NONE)

@@ -10,7 +10,7 @@ namespace rillstrand::geo::writing {
 
 std::string sql_text(std::string_view text) {
     std::string result = "'";
-    for (const char c : text) {
+    for (const char c : utf8(text)) {
         if (c == '\0')
             continue;
         if (c == '\'')
@@ -53,7 +53,7 @@ std::string described(const LayerSet& set, const Named& named) {
     std::string text = named.table().title().empty() ? named.name : named.table().title();
     if (!set.title.empty())
         text += " of " + set.title;
-    return text;
+    return utf8(text);
 }
 
 namespace {
@@ -267,10 +267,10 @@ std::vector<std::string> view_statements(const Job& job) {
                                   sql_name(view.table->name), " (", sql_name(time), ")"}));
         sql.push_back(create_view(view));
         sql.push_back(
-            joined({"INSERT INTO gpkg_contents (table_name, data_type, identifier, description, "
-                    "last_change, min_x, min_y, max_x, max_y, srs_id) SELECT ",
-                    sql_text(view.name), ", 'features', ", sql_text(view.name), ", ",
-                    sql_text(view.view->title), ", ", sql_text(with_milliseconds(job.set->now)),
+            joined({"INSERT INTO gpkg_contents (table_name, data_type, identifier, description, ",
+                    "last_change, min_x, min_y, max_x, max_y, srs_id) SELECT ", sql_text(view.name),
+                    ", 'features', ", sql_text(view.name), ", ", sql_text(view.view->title), ", ",
+                    sql_text(with_milliseconds(job.set->now)),
                     ", min_x, min_y, max_x, max_y, srs_id FROM gpkg_contents WHERE table_name = ",
                     points}));
         sql.push_back(joined({"INSERT INTO gpkg_geometry_columns (table_name, column_name, "

@@ -94,9 +94,8 @@ std::string styles(const Named& named, const LayerStyle& style) {
         const std::string colour = kml_colour(style.classes[i].colour);
         text += joined(
             {"<Style id=\"", style_id(named, i), "\"><IconStyle><color>", colour,
-             "</color><scale>0.6</scale></IconStyle><LabelStyle><scale>0</scale></LabelStyle>"
-             "<LineStyle><color>",
-             colour, "</color><width>3</width></LineStyle></Style>\n"});
+             "</color><scale>0.6</scale></IconStyle><LabelStyle><scale>0</scale></LabelStyle>",
+             "<LineStyle><color>", colour, "</color><width>3</width></LineStyle></Style>\n"});
     }
     return text;
 }

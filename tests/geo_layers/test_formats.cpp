@@ -300,6 +300,40 @@ TEST_CASE("a zipped shapefile gives everything back under short names", "[layers
         CHECK(entry.path().extension() == ".zip");
 }
 
+TEST_CASE("bytes that are no text do not break a file", "[layers][property]") {
+    const auto folder = sample::fresh_folder("no_text");
+    LayerSet set;
+    set.crs = "EPSG:25832";
+    set.now = "2031-07-01T12:00:00Z";
+    set.title = "broken \xFF title";
+    // Cut short, too long a form, half of a surrogate pair, beyond Unicode, and control characters.
+    const std::vector<std::string> texts{"a\xC3", "\xC0\xAF", "\xED\xA0\x80", "\xF5\x80\x80\x80",
+                                         "bell\a escape\x1B tab\t end"};
+    Table table{"channels"};
+    table.add_text("label",
+                   "la\xFE"
+                   "bel",
+                   texts);
+    const std::vector<double> x(texts.size(), 500000.0), y(texts.size(), 5200000.0);
+    set.layers = {point_layer(std::move(table), GeometryKind::point, x, y)};
+    write_layers(set,
+                 {LayerFormat::gpkg, LayerFormat::geojson, LayerFormat::flatgeobuf,
+                  LayerFormat::kml, LayerFormat::gpx, LayerFormat::shapefile},
+                 folder);
+    CHECK(passes(script("check_gpkg.py") + (folder / "layers.gpkg").string()));
+    CHECK(passes(script("check_geojson.py") + (folder / "layers/channels.geojson").string()));
+    CHECK(passes("/usr/bin/python3 -c 'import sys, xml.dom.minidom as m; m.parse(sys.argv[1])' " +
+                 (folder / "layers.kml").string()));
+    const auto file = reread::open(folder / "layers/channels.geojson");
+    OGRLayer* layer = file->GetLayer(0);
+    const std::string mark = "\xEF\xBF\xBD"; // U+FFFD for every byte that is none
+    for (const auto& expected :
+         {"a" + mark, mark + mark, mark + mark + mark, mark + mark + mark + mark, texts.back()}) {
+        const std::unique_ptr<OGRFeature> row{layer->GetNextFeature()};
+        CHECK(std::string{row->GetFieldAsString("label")} == expected);
+    }
+}
+
 TEST_CASE("a text too long for a shapefile is cut with a warning", "[layers][property]") {
     const auto folder = sample::fresh_folder("shapefile_cut");
     LayerSet set;
