@@ -127,10 +127,7 @@ private:
 
     bool prepare(const std::string& variable) {
         const LibraryLock lock;
-        const Handle access{H5Pcreate(H5P_FILE_ACCESS), H5Pclose};
-        // netCDF-C asks for this degree, and HDF5 wants it the same for all who open a file.
-        H5Pset_fclose_degree(access.get(), H5F_CLOSE_SEMI);
-        m_file = {H5Fopen(m_path.c_str(), H5F_ACC_RDONLY, access.get()), H5Fclose};
+        m_file = open_for_reading(m_path);
         if (!m_file)
             return false;
         m_variable = {H5Dopen2(m_file.get(), variable.c_str(), H5P_DEFAULT), H5Dclose};
@@ -267,9 +264,7 @@ bool is_hdf5(const std::filesystem::path& file) {
 
 void refuse_other_files(const std::filesystem::path& file) {
     const LibraryLock lock;
-    const Handle access{H5Pcreate(H5P_FILE_ACCESS), H5Pclose};
-    H5Pset_fclose_degree(access.get(), H5F_CLOSE_SEMI);
-    const Handle opened{H5Fopen(file.c_str(), H5F_ACC_RDONLY, access.get()), H5Fclose};
+    const Handle opened = open_for_reading(file);
     if (!opened)
         throw DataError{file.string() + ": begins as a NetCDF-4 file but cannot be opened (" +
                         library_reason() + "); it is cut short or broken, copy it again"};

@@ -53,6 +53,11 @@ private:
     Close m_close = nullptr;
 };
 
+/// Opens an HDF5 file for reading, also while netCDF-C holds it open: HDF5 wants all who open one
+/// file to ask for the same way of closing, and versions of netCDF-C ask for different ones.
+/// @return an empty handle if it cannot be opened; the caller holds the lock
+Handle open_for_reading(const std::filesystem::path& path);
+
 /// Writes into one NetCDF-4 file by means of HDF5: dimensions, variables and attributes as netCDF-C
 /// lays them out. Every call throws MachineError where HDF5 fails. The caller holds the lock.
 class H5File {

@@ -29,9 +29,7 @@ public:
         if (!is_hdf5(m_path))
             refuse("is no NetCDF-4 file");
         const LibraryLock lock;
-        const Handle access{H5Pcreate(H5P_FILE_ACCESS), H5Pclose};
-        H5Pset_fclose_degree(access.get(), H5F_CLOSE_SEMI);
-        const Handle file{H5Fopen(m_path.c_str(), H5F_ACC_RDONLY, access.get()), H5Fclose};
+        const Handle file = open_for_reading(m_path);
         if (!file)
             refuse("cannot be opened (" + library_reason() + ")");
         m_axes.time_s = read_all(file.get(), "time");

@@ -30,18 +30,6 @@ hid_t stored_type(Packing packing) {
     return H5T_IEEE_F32LE;
 }
 
-hid_t memory_type(Packing packing) {
-    switch (packing) {
-    case Packing::hundredths:
-        return H5T_NATIVE_INT16;
-    case Packing::thousandths:
-        return H5T_NATIVE_INT32;
-    case Packing::floating:
-        break;
-    }
-    return H5T_NATIVE_FLOAT;
-}
-
 const void* fill_of(Packing packing) {
     switch (packing) {
     case Packing::hundredths:
