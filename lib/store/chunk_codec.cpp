@@ -58,14 +58,14 @@ inline double whole(double x) {
 
 bool returns_as(double scale, double most, std::span<const float> values) {
     const double per_unit = 1.0 / scale;
-    bool all = true;
+    std::size_t wrong = 0;
     for (const float v : values) {
         const double x = static_cast<double>(v) * per_unit;
         const double k = whole(x);
-        const bool back = (std::abs(k) <= most) & (static_cast<float>(k * scale) == v);
-        all &= back | (v != v); // NaN: missing
+        const bool back = std::abs(k) <= most && static_cast<float>(k * scale) == v;
+        wrong += back || v != v ? 0 : 1; // NaN: missing
     }
-    return all;
+    return wrong == 0;
 }
 
 template <typename Item>

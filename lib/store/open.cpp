@@ -114,7 +114,7 @@ public:
             float* column = values.col(j).data();
             std::int64_t good = 0;
             for (Eigen::Index i = 0; i < values.rows(); ++i)
-                good += (column[i] >= low) & (column[i] <= high) ? 1 : 0;
+                good += column[i] >= low && column[i] <= high ? 1 : 0;
             counts.values += good;
             if (good == values.rows())
                 continue;

@@ -58,8 +58,8 @@ private:
         const Decoding d = *this;
         for (std::size_t i = 0; i < n; ++i) {
             const auto x = static_cast<double>(stored[i]);
-            const bool missing = (x == d.fills[0]) | (x == d.fills[1]) | (x == d.fills[2]) |
-                                 (x < d.low) | (x > d.high);
+            const bool missing = (x == d.fills[0]) || (x == d.fills[1]) || (x == d.fills[2]) ||
+                                 (x < d.low) || (x > d.high);
             const auto value = static_cast<Value>(x * d.scale + d.offset);
             values[i] = missing ? std::numeric_limits<Value>::quiet_NaN() : value;
         }
