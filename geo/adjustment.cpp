@@ -24,7 +24,9 @@ stats::PathPrior route_prior() {
 }
 
 /// Without a route each coordinate's rate is the cosine of the direction, which turns freely.
-stats::PathPrior free_prior() { return {0.0, 0.7, std::log(0.8), 1.0, std::log(1.5), 1.0, 100.0}; }
+stats::PathPrior free_prior() {
+    return {0.0, 0.7, std::log(0.8), 1.0, std::log(1.5), 1.0, 100.0};
+}
 
 Eigen::ArrayXd gathered(const std::vector<Tie>& ties, const std::vector<std::size_t>& which,
                         double (*take)(const Tie&)) {
@@ -62,9 +64,11 @@ Expected expected_from_others(const std::vector<stats::PathData>& series,
         const Eigen::ArrayXd miss = data.value - left.predicted;
         square += miss.square();
         result.z += miss.square() / left.variance;
-        if (series.size() == 1) result.miss_m = miss;
+        if (series.size() == 1)
+            result.miss_m = miss;
     }
-    if (series.size() > 1) result.miss_m = square.sqrt();
+    if (series.size() > 1)
+        result.miss_m = square.sqrt();
     result.z = result.z.sqrt();
     return result;
 }
@@ -95,9 +99,9 @@ double match(const Polyline& route, std::vector<Tie>& ties, double max_slack) {
             double best = 0.0;
             std::size_t which = 0;
             for (std::size_t k = 0; i > 0 && k < places[i - 1].size(); ++k) {
-                const double here = cost[i - 1][k] + piece_cost(ties[i - 1], ties[i],
-                                                                places[i - 1][k].measure_m,
-                                                                place.measure_m, max_slack);
+                const double here =
+                    cost[i - 1][k] + piece_cost(ties[i - 1], ties[i], places[i - 1][k].measure_m,
+                                                place.measure_m, max_slack);
                 if (k == 0 || here < best) {
                     best = here;
                     which = k;
@@ -125,7 +129,8 @@ Polyline match_to_route(const Polyline& route, std::vector<Tie>& ties, double ma
     const Polyline turned = route.reversed();
     const double forward = match(route, ties, max_slack);
     const double backward = match(turned, other_way, max_slack);
-    if (forward <= backward) return route;
+    if (forward <= backward)
+        return route;
     ties = other_way;
     return turned;
 }
@@ -133,7 +138,8 @@ Polyline match_to_route(const Polyline& route, std::vector<Tie>& ties, double ma
 Adjustment::Adjustment(std::vector<Tie>& ties, const std::optional<Polyline>& route,
                        double max_slack)
     : m_ties{ties}, m_route{route}, m_max_slack{max_slack} {
-    if (m_route) set_aside_far_from_route();
+    if (m_route)
+        set_aside_far_from_route();
     set_aside_blunders();
     if (used().size() < 2)
         throw DataError{"placement.tie_points: fewer than two tie points agree with each other; "
@@ -152,26 +158,31 @@ Adjustment::Adjustment(std::vector<Tie>& ties, const std::optional<Polyline>& ro
 std::vector<std::size_t> Adjustment::used() const {
     std::vector<std::size_t> which;
     for (std::size_t i = 0; i < m_ties.size(); ++i)
-        if (m_ties[i].used) which.push_back(i);
+        if (m_ties[i].used)
+            which.push_back(i);
     return which;
 }
 
 void Adjustment::set_aside_far_from_route() {
     std::vector<double> offsets;
-    for (const auto& tie : m_ties) offsets.push_back(std::abs(tie.offset_m));
-    std::nth_element(offsets.begin(), offsets.begin() + static_cast<std::ptrdiff_t>(offsets.size() / 2),
+    for (const auto& tie : m_ties)
+        offsets.push_back(std::abs(tie.offset_m));
+    std::nth_element(offsets.begin(),
+                     offsets.begin() + static_cast<std::ptrdiff_t>(offsets.size() / 2),
                      offsets.end());
     const double usual_m = offsets[offsets.size() / 2];
     double sd_m = 0.0;
-    for (const auto& tie : m_ties) sd_m += tie.sd_m / static_cast<double>(m_ties.size());
+    for (const auto& tie : m_ties)
+        sd_m += tie.sd_m / static_cast<double>(m_ties.size());
     if (usual_m > std::max(50.0, 10.0 * sd_m))
-        throw DataError{"placement.route: half of the tie points lie more than " +
-                        text::fixed(usual_m, 0) +
-                        " m from the route; check placement.crs, the order of x and y, and that the "
-                        "route is this cable's"};
+        throw DataError{
+            "placement.route: half of the tie points lie more than " + text::fixed(usual_m, 0) +
+            " m from the route; check placement.crs, the order of x and y, and that the "
+            "route is this cable's"};
     for (auto& tie : m_ties) {
         const double limit_m = std::max(15.0, 6.0 * std::hypot(tie.sd_m, usual_m));
-        if (std::abs(tie.offset_m) <= limit_m) continue;
+        if (std::abs(tie.offset_m) <= limit_m)
+            continue;
         tie.used = false;
         tie.reason = "lies " + text::fixed(std::abs(tie.offset_m), 0) + " m from the route";
         m_warnings.push_back({"tie-off-route", tie.place + ": tie point '" + tie.label + "' " +
@@ -183,10 +194,10 @@ void Adjustment::set_aside_blunders() {
     const stats::PathPrior prior = m_route ? route_prior() : free_prior();
     for (;;) {
         const auto which = used();
-        if (which.size() <= enough_ties) return;
+        if (which.size() <= enough_ties)
+            return;
         const auto series = series_of(m_ties, which, m_route.has_value());
-        const Expected all =
-            expected_from_others(series, prior, stats::walk_sizes(series, prior));
+        const Expected all = expected_from_others(series, prior, stats::walk_sizes(series, prior));
         // The worst few are tried in turn: without a blunder the walk is narrower and shows it.
         std::vector<std::size_t> order(which.size());
         std::iota(order.begin(), order.end(), std::size_t{0});
@@ -200,7 +211,8 @@ void Adjustment::set_aside_blunders() {
         std::size_t blunder = which.size();
         for (std::size_t t = 0; t < tries; ++t) {
             const std::size_t k = order[t];
-            if (all.z(static_cast<Eigen::Index>(k)) < 2.0) break;
+            if (all.z(static_cast<Eigen::Index>(k)) < 2.0)
+                break;
             std::vector<std::size_t> without = which;
             without.erase(without.begin() + static_cast<std::ptrdiff_t>(k));
             const auto sizes =
@@ -214,7 +226,8 @@ void Adjustment::set_aside_blunders() {
                 blunder = k;
             }
         }
-        if (blunder == which.size()) return;
+        if (blunder == which.size())
+            return;
         Tie& tie = m_ties[which[blunder]];
         tie.used = false;
         tie.residual_m = miss_m;
@@ -222,8 +235,8 @@ void Adjustment::set_aside_blunders() {
                      (m_route ? (miss_m > 0.0 ? "earlier along the route" : "later along the route")
                               : "away") +
                      " (" + text::fixed(worst, 1) + " sd)";
-        m_warnings.push_back({"tie-blunder", tie.place + ": tie point '" + tie.label + "': " +
-                                                 tie.reason +
+        m_warnings.push_back({"tie-blunder", tie.place + ": tie point '" + tie.label +
+                                                 "': " + tie.reason +
                                                  "; it was set aside, check its fibre distance and "
                                                  "coordinates"});
     }
@@ -233,7 +246,8 @@ void Adjustment::note_residuals() {
     const stats::PathPrior prior = m_route ? route_prior() : free_prior();
     const auto which = used();
     const auto series = series_of(m_ties, which, m_route.has_value());
-    if (which.size() < 3) return;
+    if (which.size() < 3)
+        return;
     const Expected all = expected_from_others(series, prior, stats::walk_sizes(series, prior));
     for (std::size_t k = 0; k < which.size(); ++k)
         m_ties[which[k]].residual_m = all.miss_m(static_cast<Eigen::Index>(k));
@@ -263,7 +277,8 @@ PlacedPath Adjustment::place(const Eigen::ArrayXd& path_m) const {
     out.xy.col(1) = y.mean;
     double ground_m = 0.0;
     for (Eigen::Index j = 0; j < n; ++j) {
-        if (j > 0) ground_m += (out.xy.row(j) - out.xy.row(j - 1)).matrix().norm();
+        if (j > 0)
+            ground_m += (out.xy.row(j) - out.xy.row(j - 1)).matrix().norm();
         out.ground_m(j) = ground_m;
         const Eigen::Vector2d ahead = Eigen::Vector2d{x.rate(j), y.rate(j)}.normalized();
         const double ex = std::isfinite(ahead.x()) ? ahead.x() : 1.0;

@@ -113,7 +113,8 @@ Fit fit_without(const ControlTable& c, const std::vector<Eigen::Index>& kept) {
 ControlFit fit_control(const std::filesystem::path& file) {
     const ControlTable control = read_control(file);
     std::vector<Eigen::Index> all;
-    for (Eigen::Index i = 0; i < control.local.rows(); ++i) all.push_back(i);
+    for (Eigen::Index i = 0; i < control.local.rows(); ++i)
+        all.push_back(i);
     std::vector<Eigen::Index> kept = all;
     Fit fit = fit_without(control, kept);
     ControlFit result;
@@ -130,15 +131,16 @@ ControlFit fit_control(const std::filesystem::path& file) {
             double scatter = 0.0;
             for (const Eigen::Index i : without)
                 scatter += std::pow(trial.distance_m(i) / control.sd_m(i), 2);
-            const double factor =
-                std::max(1.0, std::sqrt(scatter / (2.0 * static_cast<double>(without.size()) - 4.0 + 1e-9)));
+            const double factor = std::max(
+                1.0, std::sqrt(scatter / (2.0 * static_cast<double>(without.size()) - 4.0 + 1e-9)));
             const double off = trial.distance_m(kept[k]) / (control.sd_m(kept[k]) * factor * 1.5);
             if (without.size() >= 3 && off > worst) {
                 worst = off;
                 which = k;
             }
         }
-        if (which == kept.size()) break;
+        if (which == kept.size())
+            break;
         const Eigen::Index bad = kept[which];
         kept.erase(kept.begin() + static_cast<std::ptrdiff_t>(which));
         fit = fit_without(control, kept);

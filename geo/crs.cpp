@@ -45,16 +45,19 @@ Crs::Crs(const std::string& definition, const std::string& key) : m_data{std::ma
     m_data->definition = definition;
     m_data->object.reset(proj_create(m_data->context.get(), definition.c_str()));
     if (!m_data->object || proj_is_crs(m_data->object.get()) == 0)
-        throw DataError{key + ": '" + definition.substr(0, 80) +
-                        "' is no known coordinate system; write an EPSG code such as EPSG:25832, or "
-                        "WKT"};
+        throw DataError{
+            key + ": '" + definition.substr(0, 80) +
+            "' is no known coordinate system; write an EPSG code such as EPSG:25832, or "
+            "WKT"};
 }
 
 Crs::Crs(Crs&&) noexcept = default;
 Crs& Crs::operator=(Crs&&) noexcept = default;
 Crs::~Crs() = default;
 
-const std::string& Crs::definition() const { return m_data->definition; }
+const std::string& Crs::definition() const {
+    return m_data->definition;
+}
 
 std::string Crs::name() const {
     const char* name = proj_get_name(m_data->object.get());
@@ -70,10 +73,12 @@ std::string Crs::wkt() const {
 bool Crs::geographic() const {
     PJ_TYPE type = proj_get_type(m_data->object.get());
     if (type == PJ_TYPE_BOUND_CRS || type == PJ_TYPE_COMPOUND_CRS) {
-        const Object inner{type == PJ_TYPE_BOUND_CRS
-                               ? proj_get_source_crs(m_data->context.get(), m_data->object.get())
-                               : proj_crs_get_sub_crs(m_data->context.get(), m_data->object.get(), 0)};
-        if (inner) type = proj_get_type(inner.get());
+        const Object inner{
+            type == PJ_TYPE_BOUND_CRS
+                ? proj_get_source_crs(m_data->context.get(), m_data->object.get())
+                : proj_crs_get_sub_crs(m_data->context.get(), m_data->object.get(), 0)};
+        if (inner)
+            type = proj_get_type(inner.get());
     }
     return type == PJ_TYPE_GEOGRAPHIC_2D_CRS || type == PJ_TYPE_GEOGRAPHIC_3D_CRS;
 }
@@ -97,7 +102,8 @@ Transformation::Transformation(const Crs& from, const Crs& to) : m_data{std::mak
     PJ_CONTEXT* context = m_data->context.get();
     const Object found{proj_create_crs_to_crs(context, from.definition().c_str(),
                                               to.definition().c_str(), nullptr)};
-    if (found) m_data->object.reset(proj_normalize_for_visualization(context, found.get()));
+    if (found)
+        m_data->object.reset(proj_normalize_for_visualization(context, found.get()));
     if (!m_data->object)
         throw DataError{"there is no way from " + from.name() + " to " + to.name() +
                         "; choose another coordinate system"};
@@ -116,12 +122,17 @@ PointsXY Transformation::apply(const PointsXY& points, bool forward) const {
     proj_trans_generic(m_data->object.get(), forward ? PJ_FWD : PJ_INV, x, sizeof(double), n, y,
                        sizeof(double), n, nullptr, 0, 0, nullptr, 0, 0);
     for (std::size_t i = 0; i < n; ++i)
-        if (!std::isfinite(x[i]) || !std::isfinite(y[i])) x[i] = y[i] = nan;
+        if (!std::isfinite(x[i]) || !std::isfinite(y[i]))
+            x[i] = y[i] = nan;
     return result;
 }
 
-PointsXY Transformation::forward(const PointsXY& points) const { return apply(points, true); }
-PointsXY Transformation::inverse(const PointsXY& points) const { return apply(points, false); }
+PointsXY Transformation::forward(const PointsXY& points) const {
+    return apply(points, true);
+}
+PointsXY Transformation::inverse(const PointsXY& points) const {
+    return apply(points, false);
+}
 
 std::string Transformation::operation() const {
     const Object used{proj_trans_get_last_used_operation(m_data->object.get())};
@@ -149,15 +160,16 @@ GroundPlane::GroundPlane(const PointsXY& lonlat, double height_m)
     Eigen::Vector3d sum = Eigen::Vector3d::Zero();
     constexpr double degree = 3.14159265358979323846 / 180.0;
     for (Eigen::Index i = 0; i < lonlat.rows(); ++i) {
-        if (!std::isfinite(lonlat(i, 0)) || !std::isfinite(lonlat(i, 1))) continue;
+        if (!std::isfinite(lonlat(i, 0)) || !std::isfinite(lonlat(i, 1)))
+            continue;
         const double lon = lonlat(i, 0) * degree, lat = lonlat(i, 1) * degree;
         sum += Eigen::Vector3d{std::cos(lat) * std::cos(lon), std::cos(lat) * std::sin(lon),
                                std::sin(lat)};
     }
     const double lon0 = std::atan2(sum.y(), sum.x()) / degree;
     const double lat0 = std::atan2(sum.z(), std::hypot(sum.x(), sum.y())) / degree;
-    const Crs plane{"+proj=tmerc +lat_0=" + text::fixed(lat0, 6) + " +lon_0=" +
-                        text::fixed(lon0, 6) + " +k=1 +datum=WGS84 +units=m +type=crs",
+    const Crs plane{"+proj=tmerc +lat_0=" + text::fixed(lat0, 6) +
+                        " +lon_0=" + text::fixed(lon0, 6) + " +k=1 +datum=WGS84 +units=m +type=crs",
                     "plane"};
     m_transformation = std::make_shared<Transformation>(Crs{"EPSG:4326", "plane"}, plane);
 }

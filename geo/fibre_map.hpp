@@ -7,8 +7,8 @@
 
 namespace rillstrand::geo {
 
-/// Fibre distance to length of cable that covers ground: coils, baths, masts and rods are taken out,
-/// and beyond the turnaround the cable runs back along itself.
+/// Fibre distance to length of cable that covers ground: coils, baths, masts and rods are taken
+/// out, and beyond the turnaround the cable runs back along itself.
 class FibreMap {
 public:
     explicit FibreMap(const campaign::Campaign& campaign);

@@ -31,8 +31,7 @@ double depth_of(double fibre_m, double datum_m, campaign::Direction direction,
                 const std::optional<campaign::Winding>& winding) {
     double along_m = direction == campaign::Direction::down ? fibre_m - datum_m : datum_m - fibre_m;
     if (winding) {
-        const double turn_m =
-            std::hypot(std::numbers::pi * winding->diameter_m, winding->pitch_m);
+        const double turn_m = std::hypot(std::numbers::pi * winding->diameter_m, winding->pitch_m);
         along_m *= winding->pitch_m / turn_m;
     }
     return along_m;
@@ -42,8 +41,8 @@ class Placer {
 public:
     Placer(const campaign::Campaign& campaign, const Eigen::ArrayXd& distance_m,
            const record::Source* source)
-        : m_campaign{campaign}, m_settings{*campaign.placement}, m_distance_m{distance_m},
-          m_source{source}, m_map{campaign} {}
+        : m_campaign{campaign}, m_settings{*campaign.placement},
+          m_distance_m{distance_m}, m_source{source}, m_map{campaign} {}
 
     Placement run() {
         gather_ties();
@@ -76,9 +75,9 @@ private:
         Problems problems;
         for (const auto& mark : m_campaign.marks) {
             try {
-                if (m_source == nullptr) continue;
-                const FoundMark found =
-                    find_mark(*m_source, mark, m_campaign.place(mark.where));
+                if (m_source == nullptr)
+                    continue;
+                const FoundMark found = find_mark(*m_source, mark, m_campaign.place(mark.where));
                 TiePoint tie;
                 tie.label = mark.label.empty() ? "mark" : mark.label;
                 tie.place = m_campaign.place(mark.where);
@@ -171,7 +170,8 @@ private:
             return m_ties[a].path_m < m_ties[b].path_m;
         });
         std::vector<Tie> sorted;
-        for (const std::size_t i : m_order) sorted.push_back(m_ties[i]);
+        for (const std::size_t i : m_order)
+            sorted.push_back(m_ties[i]);
         m_ties = std::move(sorted);
         std::vector<double> ground_m, cable_m;
         for (std::size_t i = 1; i < m_ties.size(); ++i) {
@@ -179,7 +179,8 @@ private:
             cable_m.push_back(m_ties[i].path_m - m_ties[i - 1].path_m);
         }
         refuse_wrong_unit(ground_m, cable_m, m_settings.tie_points.string());
-        if (!m_settings.route) return;
+        if (!m_settings.route)
+            return;
         const std::string route_crs = m_settings.crs == "local" ? m_out.crs : m_settings.crs;
         const LineFromFile line = read_line(*m_settings.route, route_crs, "placement.route");
         append(line.warnings);
@@ -194,13 +195,15 @@ private:
     void place_channels(const Adjustment& adjustment) {
         const Eigen::Index n = m_distance_m.size();
         Eigen::ArrayXd path_m(n);
-        for (Eigen::Index j = 0; j < n; ++j) path_m(j) = m_map.path_m(m_distance_m(j));
+        for (Eigen::Index j = 0; j < n; ++j)
+            path_m(j) = m_map.path_m(m_distance_m(j));
         std::vector<Eigen::Index> order(static_cast<std::size_t>(n));
         std::iota(order.begin(), order.end(), Eigen::Index{0});
         std::stable_sort(order.begin(), order.end(),
                          [&](Eigen::Index a, Eigen::Index b) { return path_m(a) < path_m(b); });
         Eigen::ArrayXd sorted(n);
-        for (Eigen::Index k = 0; k < n; ++k) sorted(k) = path_m(order[static_cast<std::size_t>(k)]);
+        for (Eigen::Index k = 0; k < n; ++k)
+            sorted(k) = path_m(order[static_cast<std::size_t>(k)]);
         const PlacedPath path = adjustment.place(sorted);
         auto& c = m_out.channels;
         m_xy.resize(n, 2);
@@ -233,15 +236,19 @@ private:
                 last_m = std::max(last_m, tie.path_m);
                 ++used;
             }
-        const double margin_m = 0.5 * (last_m - first_m) / static_cast<double>(std::max<std::size_t>(1, used - 1));
+        const double margin_m =
+            0.5 * (last_m - first_m) / static_cast<double>(std::max<std::size_t>(1, used - 1));
         for (Eigen::Index j = 0; j < m_path_m.size(); ++j) {
             const bool beyond = m_path_m(j) < first_m || m_path_m(j) > last_m;
-            if (!beyond) continue;
+            if (!beyond)
+                continue;
             const double ground_m = m_out.channels.ground_m(j);
-            const bool off_route = m_route && (ground_m < -0.5 || ground_m > m_route->length_m() + 0.5);
-            const bool too_far = !m_route && (m_path_m(j) < first_m - margin_m ||
-                                              m_path_m(j) > last_m + margin_m);
-            if (off_route || too_far) drop(j, NoPosition::beyond_survey);
+            const bool off_route =
+                m_route && (ground_m < -0.5 || ground_m > m_route->length_m() + 0.5);
+            const bool too_far =
+                !m_route && (m_path_m(j) < first_m - margin_m || m_path_m(j) > last_m + margin_m);
+            if (off_route || too_far)
+                drop(j, NoPosition::beyond_survey);
         }
     }
 
@@ -260,7 +267,8 @@ private:
     void refuse_pieces() {
         std::vector<std::size_t> used;
         for (std::size_t i = 0; i < m_ties.size(); ++i)
-            if (m_ties[i].used) used.push_back(i);
+            if (m_ties[i].used)
+                used.push_back(i);
         std::size_t refused = 0;
         double cable_sum = 0.0, ground_sum = 0.0;
         for (std::size_t k = 1; k < used.size(); ++k) {
@@ -269,7 +277,8 @@ private:
             const double cable_m = b.path_m - a.path_m, ground_m = ground_between(a, b);
             const double sd_m = std::sqrt(a.sd_m * a.sd_m + b.sd_m * b.sd_m +
                                           a.path_sd_m * a.path_sd_m + b.path_sd_m * b.path_sd_m);
-            if (cable_m <= 0.0) continue; // two surveys of one coil, or of both legs
+            if (cable_m <= 0.0)
+                continue; // two surveys of one coil, or of both legs
             std::string why;
             if (ground_m - cable_m > 3.0 * sd_m)
                 why = "only " + text::fixed(cable_m, 1) + " m of fibre for " +
@@ -286,8 +295,8 @@ private:
             }
             ++refused;
             m_out.warnings.push_back({"piece-refused", a.place + " and " + b.place + ": between '" +
-                                                           a.label + "' and '" + b.label + "' there is " +
-                                                           why +
+                                                           a.label + "' and '" + b.label +
+                                                           "' there is " + why +
                                                            "; its channels have no position"});
             for (Eigen::Index j = 0; j < m_path_m.size(); ++j)
                 if (m_path_m(j) > a.path_m && m_path_m(j) < b.path_m)
@@ -297,7 +306,8 @@ private:
         if (refused > 0 && refused + 1 == used.size()) {
             Problems problems;
             for (const auto& warning : m_out.warnings)
-                if (warning.code == "piece-refused") problems.add(warning.text);
+                if (warning.code == "piece-refused")
+                    problems.add(warning.text);
             problems.throw_if_any();
         }
     }
@@ -306,18 +316,22 @@ private:
         std::vector<std::pair<double, double>> known;
         for (std::size_t k = 0; k < m_ties.size(); ++k) {
             const double z = m_points[m_order[k]].z;
-            if (std::isfinite(z) && m_ties[k].used) known.emplace_back(m_ties[k].path_m, z);
+            if (std::isfinite(z) && m_ties[k].used)
+                known.emplace_back(m_ties[k].path_m, z);
         }
         for (Eigen::Index j = 0; j < m_path_m.size(); ++j) {
             double& z = m_out.channels.z(j);
             if (m_route && m_route->along_slope() && std::isfinite(m_out.channels.ground_m(j)))
                 z = m_route->height_at(m_out.channels.ground_m(j));
-            else if (known.size() == 1) z = known.front().second;
+            else if (known.size() == 1)
+                z = known.front().second;
             else if (known.size() > 1) {
-                auto next = std::upper_bound(known.begin(), known.end(),
-                                             std::pair{m_path_m(j), 1e300});
-                if (next == known.begin()) ++next;
-                if (next == known.end()) --next;
+                auto next =
+                    std::upper_bound(known.begin(), known.end(), std::pair{m_path_m(j), 1e300});
+                if (next == known.begin())
+                    ++next;
+                if (next == known.end())
+                    --next;
                 const auto before = next - 1;
                 const double w = std::clamp((m_path_m(j) - before->first) /
                                                 std::max(1e-9, next->first - before->first),
@@ -334,13 +348,15 @@ private:
                         const std::optional<std::array<double, 2>>& position,
                         const std::optional<double>& elevation_m) {
         const auto* stretch = m_campaign.find_stretch(stretch_name);
-        if (stretch == nullptr) return;
+        if (stretch == nullptr)
+            return;
         const record::Axes axes{{}, 0.0, m_distance_m};
         const auto range = record::places_between(axes, stretch->from_m, stretch->to_m);
         PointsXY at(1, 2);
         if (position) {
             at << (*position)[0], (*position)[1];
-            if (m_local) at = m_local->apply(at);
+            if (m_local)
+                at = m_local->apply(at);
             at = m_plane->from_lonlat(m_to_wgs84->forward(at));
         }
         for (Eigen::Index j = range.first; j < range.first + range.count; ++j) {
@@ -387,8 +403,8 @@ private:
                                                                 name + "' or on nodata"});
         };
         if (m_settings.elevation) {
-            const RasterSamples z = sample_raster(*m_settings.elevation, m_channel_lonlat, true,
-                                                  "placement.elevation");
+            const RasterSamples z =
+                sample_raster(*m_settings.elevation, m_channel_lonlat, true, "placement.elevation");
             c.z = c.z.isFinite().select(c.z, z.value);
             c.slope_deg = z.slope_deg;
             c.aspect_deg = z.aspect_deg;
@@ -403,7 +419,8 @@ private:
     }
 
     void put_on_river() {
-        if (!m_settings.river) return;
+        if (!m_settings.river)
+            return;
         const LineFromFile line = read_line(*m_settings.river, m_out.crs, "placement.river");
         append(line.warnings);
         const Polyline river{m_plane->from_lonlat(line.lonlat), {}};
@@ -411,11 +428,13 @@ private:
         double with = 0.0;
         double last = nan;
         for (Eigen::Index j = 0; j < m_xy.rows(); ++j) {
-            if (!std::isfinite(m_xy(j, 0))) continue;
+            if (!std::isfinite(m_xy(j, 0)))
+                continue;
             const Nearest place = river.nearest(m_xy(j, 0), m_xy(j, 1));
             c.station_m(j) = place.measure_m;
             c.offset_m(j) = place.offset_m;
-            if (std::isfinite(last)) with += place.measure_m > last ? 1.0 : -1.0;
+            if (std::isfinite(last))
+                with += place.measure_m > last ? 1.0 : -1.0;
             last = place.measure_m;
         }
         for (const auto& stream : m_campaign.streams) {
@@ -460,12 +479,14 @@ private:
             const auto next = std::upper_bound(used.begin(), used.end(), k);
             if (tie.used && next != used.end()) {
                 const double ground_m = ground_between(tie, m_ties[*next]);
-                if (ground_m > 0.0) placed.slack = (m_ties[*next].path_m - tie.path_m) / ground_m;
+                if (ground_m > 0.0)
+                    placed.slack = (m_ties[*next].path_m - tie.path_m) / ground_m;
             }
             m_out.ties.push_back(placed);
         }
-        std::stable_sort(m_out.ties.begin(), m_out.ties.end(),
-                         [](const PlacedTie& a, const PlacedTie& b) { return a.fibre_m < b.fibre_m; });
+        std::stable_sort(
+            m_out.ties.begin(), m_out.ties.end(),
+            [](const PlacedTie& a, const PlacedTie& b) { return a.fibre_m < b.fibre_m; });
     }
 
     void draw_cable() {
@@ -479,19 +500,24 @@ private:
             cable.to_m = to_m;
             double first = nan, last = nan;
             for (Eigen::Index j = range.first; j < range.first + range.count; ++j) {
-                if (!std::isfinite(c.x(j))) continue;
+                if (!std::isfinite(c.x(j)))
+                    continue;
                 cable.vertices.emplace_back(c.x(j), c.y(j), c.z(j));
-                if (std::isnan(first)) first = c.ground_m(j);
+                if (std::isnan(first))
+                    first = c.ground_m(j);
                 last = c.ground_m(j);
             }
             const double ground_m = std::abs(last - first);
-            const double path_m = range.count > 1 ? std::abs(m_path_m(range.first + range.count - 1) -
-                                                             m_path_m(range.first))
-                                                  : 0.0;
+            const double path_m =
+                range.count > 1
+                    ? std::abs(m_path_m(range.first + range.count - 1) - m_path_m(range.first))
+                    : 0.0;
             cable.slack = ground_m > 0.0 ? path_m / ground_m : nan;
-            if (cable.vertices.size() > 1) m_out.cable.push_back(cable);
+            if (cable.vertices.size() > 1)
+                m_out.cable.push_back(cable);
         };
-        for (const auto& s : m_campaign.stretches) line(s.name, s.from_m, s.to_m);
+        for (const auto& s : m_campaign.stretches)
+            line(s.name, s.from_m, s.to_m);
         if (m_campaign.stretches.empty() && m_distance_m.size() > 1)
             line("cable", m_distance_m(0), m_distance_m(m_distance_m.size() - 1));
     }
@@ -499,8 +525,10 @@ private:
     void finish() {
         Eigen::Index beyond = 0, slack = 0;
         for (const NoPosition reason : m_out.channels.reason) {
-            if (reason == NoPosition::beyond_survey) ++beyond;
-            if (reason == NoPosition::slack_refused) ++slack;
+            if (reason == NoPosition::beyond_survey)
+                ++beyond;
+            if (reason == NoPosition::slack_refused)
+                ++slack;
         }
         m_out.unplaced = beyond + slack;
         if (beyond > 0)
@@ -509,9 +537,10 @@ private:
                                           " channels lie beyond the surveyed cable and have no "
                                           "position; add tie points to place them"});
         if (m_out.unplaced == m_distance_m.size())
-            throw DataError{m_settings.tie_points.string() +
-                            ": no channel of the record lies between the tie points; compare fibre_m "
-                            "with the record's distances"};
+            throw DataError{
+                m_settings.tie_points.string() +
+                ": no channel of the record lies between the tie points; compare fibre_m "
+                "with the record's distances"};
     }
 
     const campaign::Campaign& m_campaign;
@@ -525,8 +554,8 @@ private:
     std::optional<Transformation> m_to_wgs84, m_to_output;
     std::optional<GroundPlane> m_plane;
     PointsXY m_lonlat, m_plane_xy, m_xy, m_channel_lonlat;
-    std::vector<Tie> m_ties;            ///< by path
-    std::vector<std::size_t> m_order;   ///< m_ties[k] is m_points[m_order[k]]
+    std::vector<Tie> m_ties;          ///< by path
+    std::vector<std::size_t> m_order; ///< m_ties[k] is m_points[m_order[k]]
     std::optional<Polyline> m_route;
     Eigen::ArrayXd m_path_m;
     Placement m_out;
@@ -540,7 +569,8 @@ Placement place(const campaign::Campaign& campaign, const Eigen::ArrayXd& distan
 }
 
 std::vector<std::string> check_placement(const campaign::Campaign& campaign) {
-    if (!campaign.placement) return {};
+    if (!campaign.placement)
+        return {};
     const auto& settings = *campaign.placement;
     Problems problems;
     const auto tried = [&problems](const auto& work) {
@@ -562,9 +592,12 @@ std::vector<std::string> check_placement(const campaign::Campaign& campaign) {
         if (!survey.points.empty())
             (void)checked_lonlat(survey.points, crs, Transformation{crs, Crs{wgs84, "WGS 84"}});
     });
-    if (settings.output_crs) tried([&] { (void)Crs{*settings.output_crs, "placement.output_crs"}; });
-    if (settings.route) tried([&] { (void)read_line(*settings.route, wgs84, "placement.route"); });
-    if (settings.river) tried([&] { (void)read_line(*settings.river, wgs84, "placement.river"); });
+    if (settings.output_crs)
+        tried([&] { (void)Crs{*settings.output_crs, "placement.output_crs"}; });
+    if (settings.route)
+        tried([&] { (void)read_line(*settings.route, wgs84, "placement.route"); });
+    if (settings.river)
+        tried([&] { (void)read_line(*settings.river, wgs84, "placement.river"); });
     return problems.list();
 }
 

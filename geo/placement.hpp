@@ -22,9 +22,9 @@ struct ChannelPositions {
     Eigen::ArrayXd lon, lat; ///< WGS 84, degrees
     Eigen::ArrayXd position_sd_m; ///< sqrt(var_x + var_y)
     Eigen::ArrayXd along_sd_m, across_sd_m;
-    Eigen::ArrayXd ground_m;  ///< distance over the ground along the cable's line
-    Eigen::ArrayXd station_m; ///< chainage along the river, NaN without one
-    Eigen::ArrayXd offset_m;  ///< from the river, positive to the right of its travel
+    Eigen::ArrayXd ground_m;              ///< distance over the ground along the cable's line
+    Eigen::ArrayXd station_m;             ///< chainage along the river, NaN without one
+    Eigen::ArrayXd offset_m;              ///< from the river, positive to the right of its travel
     Eigen::ArrayXd slope_deg, aspect_deg; ///< of the elevation; aspect clockwise from north
     std::vector<int> leg;
     std::vector<NoPosition> reason;
@@ -43,7 +43,7 @@ struct PlacedTie {
     double sd_m = 0.0;
     double residual_m = 0.0; ///< along the line: surveyed minus expected from the others
     double offset_m = 0.0;   ///< from the route, positive to the right; NaN without a route
-    double slack = 0.0;      ///< fibre metres per ground metre to the next used one; NaN at the last
+    double slack = 0.0; ///< fibre metres per ground metre to the next used one; NaN at the last
     bool used = true;
     std::string reason; ///< why it was set aside
 };
@@ -60,10 +60,10 @@ struct Placement {
     ChannelPositions channels;
     std::vector<PlacedTie> ties;
     std::vector<CableLine> cable;
-    std::string crs, crs_name;               ///< of the survey
+    std::string crs, crs_name; ///< of the survey
     std::string output_crs, output_crs_name, output_wkt;
-    std::string operation;                   ///< to WGS 84, as PROJ names it
-    double operation_accuracy_m = 0.0;       ///< NaN: not stated
+    std::string operation;             ///< to WGS 84, as PROJ names it
+    double operation_accuracy_m = 0.0; ///< NaN: not stated
     bool has_route = false;
     std::string lengths;                     ///< `along the slope` or `horizontal`
     double first_lon = 0.0, first_lat = 0.0; ///< of the first tie point, to look at
@@ -77,10 +77,10 @@ struct Placement {
 /// Puts every channel on the ground.
 ///
 /// The length over the ground is estimated from all tie points together: slack wanders along the
-/// cable as a random walk whose size is told from the tie points (stats::walk_sizes), each tie point
-/// weighs by its sd. A tie point that the others contradict by more than five standard deviations is
-/// set aside by name. With a route the cable lies on it; without one it runs between the tie points
-/// as straight or as curved as they say.
+/// cable as a random walk whose size is told from the tie points (stats::walk_sizes), each tie
+/// point weighs by its sd. A tie point that the others contradict by more than five standard
+/// deviations is set aside by name. With a route the cable lies on it; without one it runs between
+/// the tie points as straight or as curved as they say.
 /// @param source  for [[mark]]; may be nullptr where there is none
 /// @throws DataError with what cannot be placed and why
 Placement place(const campaign::Campaign& campaign, const Eigen::ArrayXd& distance_m,

@@ -29,15 +29,18 @@ public:
         : m_band{band}, m_width{band.GetXSize()}, m_height{band.GetYSize()} {
         int has = 0;
         const double value = band.GetNoDataValue(&has);
-        if (has != 0) m_nodata = value;
+        if (has != 0)
+            m_nodata = value;
     }
     double at(int column, int row) {
-        if (column < 0 || row < 0 || column >= m_width || row >= m_height) return nan;
+        if (column < 0 || row < 0 || column >= m_width || row >= m_height)
+            return nan;
         constexpr int strip_rows = 64;
         const int strip = row / strip_rows;
         auto found = m_strips.find(strip);
         if (found == m_strips.end()) {
-            if (m_strips.size() > 64) m_strips.clear();
+            if (m_strips.size() > 64)
+                m_strips.clear();
             const int first = strip * strip_rows;
             const int rows = std::min(strip_rows, m_height - first);
             std::vector<double> values(static_cast<std::size_t>(rows) *
@@ -68,7 +71,8 @@ double bilinear(Cells& cells, double column, double row) {
     const double wc = c - c0, wr = r - r0;
     const double mixed = (1.0 - wr) * ((1.0 - wc) * cells.at(c0, r0) + wc * cells.at(c0 + 1, r0)) +
                          wr * ((1.0 - wc) * cells.at(c0, r0 + 1) + wc * cells.at(c0 + 1, r0 + 1));
-    if (std::isfinite(mixed)) return mixed;
+    if (std::isfinite(mixed))
+        return mixed;
     return cells.at(static_cast<int>(std::floor(column)), static_cast<int>(std::floor(row)));
 }
 
@@ -77,15 +81,19 @@ std::array<double, 2> slope_aspect(Cells& cells, double column, double row, doub
                                    double height_m) {
     const int c = static_cast<int>(std::floor(column)), r = static_cast<int>(std::floor(row));
     const auto z = [&](int dc, int dr) { return cells.at(c + dc, r + dr); };
-    const double east = ((z(1, -1) + 2 * z(1, 0) + z(1, 1)) - (z(-1, -1) + 2 * z(-1, 0) + z(-1, 1))) /
-                        (8.0 * width_m);
-    const double north = ((z(-1, -1) + 2 * z(0, -1) + z(1, -1)) - (z(-1, 1) + 2 * z(0, 1) + z(1, 1))) /
-                         (8.0 * height_m);
+    const double east =
+        ((z(1, -1) + 2 * z(1, 0) + z(1, 1)) - (z(-1, -1) + 2 * z(-1, 0) + z(-1, 1))) /
+        (8.0 * width_m);
+    const double north =
+        ((z(-1, -1) + 2 * z(0, -1) + z(1, -1)) - (z(-1, 1) + 2 * z(0, 1) + z(1, 1))) /
+        (8.0 * height_m);
     constexpr double degree = 180.0 / std::numbers::pi;
     const double slope = std::atan(std::hypot(east, north)) * degree;
-    if (!std::isfinite(slope)) return {nan, nan};
+    if (!std::isfinite(slope))
+        return {nan, nan};
     double aspect = std::atan2(-east, -north) * degree;
-    if (aspect < 0.0) aspect += 360.0;
+    if (aspect < 0.0)
+        aspect += 360.0;
     return {slope, slope > 0.0 ? aspect : nan};
 }
 
@@ -96,13 +104,13 @@ RasterSamples sample_raster(const std::filesystem::path& file, const PointsXY& l
     GDALAllRegister();
     CPLPushErrorHandler(CPLQuietErrorHandler);
     const std::array<const char*, 6> drivers{"GTiff", "AAIGrid", "HFA", "SRTMHGT", "PNG", nullptr};
-    const std::unique_ptr<GDALDataset, CloseDataset> dataset{
-        GDALDataset::Open(file.c_str(), GDAL_OF_RASTER | GDAL_OF_READONLY, drivers.data(), nullptr,
-                          nullptr)};
+    const std::unique_ptr<GDALDataset, CloseDataset> dataset{GDALDataset::Open(
+        file.c_str(), GDAL_OF_RASTER | GDAL_OF_READONLY, drivers.data(), nullptr, nullptr)};
     CPLPopErrorHandler();
     if (!dataset)
         throw DataError{file.string() +
-                        ": cannot be read as a raster (GeoTIFF, ASCII grid, IMG, HGT); correct " + key};
+                        ": cannot be read as a raster (GeoTIFF, ASCII grid, IMG, HGT); correct " +
+                        key};
     std::array<double, 6> transform{}, inverse{};
     const OGRSpatialReference* reference = dataset->GetSpatialRef();
     if (reference == nullptr || dataset->GetGeoTransform(transform.data()) != CE_None ||
@@ -119,14 +127,19 @@ RasterSamples sample_raster(const std::filesystem::path& file, const PointsXY& l
     Cells cells{*dataset->GetRasterBand(1)};
     RasterSamples out;
     out.value = Eigen::ArrayXd::Constant(xy.rows(), nan);
-    if (with_slope) out.slope_deg = out.aspect_deg = out.value;
+    if (with_slope)
+        out.slope_deg = out.aspect_deg = out.value;
     for (Eigen::Index i = 0; i < xy.rows(); ++i) {
-        if (!std::isfinite(xy(i, 0))) continue;
+        if (!std::isfinite(xy(i, 0)))
+            continue;
         const double column = inverse[0] + inverse[1] * xy(i, 0) + inverse[2] * xy(i, 1);
         const double row = inverse[3] + inverse[4] * xy(i, 0) + inverse[5] * xy(i, 1);
-        out.value(i) = std::abs(column) < 1e9 && std::abs(row) < 1e9 ? bilinear(cells, column, row) : nan;
-        if (!std::isfinite(out.value(i))) ++out.outside;
-        if (!with_slope || !std::isfinite(out.value(i))) continue;
+        out.value(i) =
+            std::abs(column) < 1e9 && std::abs(row) < 1e9 ? bilinear(cells, column, row) : nan;
+        if (!std::isfinite(out.value(i)))
+            ++out.outside;
+        if (!with_slope || !std::isfinite(out.value(i)))
+            continue;
         double width_m = std::abs(transform[1]), height_m = std::abs(transform[5]);
         if (crs.geographic()) {
             width_m = geodesic_m(xy(i, 0), xy(i, 1), xy(i, 0) + transform[1], xy(i, 1));

@@ -9,7 +9,7 @@
 namespace rillstrand::geo {
 
 struct RasterSamples {
-    Eigen::ArrayXd value; ///< bilinear; NaN outside the raster or beside nodata
+    Eigen::ArrayXd value;                 ///< bilinear; NaN outside the raster or beside nodata
     Eigen::ArrayXd slope_deg, aspect_deg; ///< empty unless asked for
     Eigen::Index outside = 0;
 };

@@ -42,7 +42,8 @@ void collect(const OGRGeometry& geometry, std::vector<Part>& parts) {
         Part part;
         for (int i = 0; i < line->getNumPoints(); ++i)
             part.emplace_back(line->getX(i), line->getY(i), line->Is3D() ? line->getZ(i) : nan);
-        if (part.size() > 1) parts.push_back(std::move(part));
+        if (part.size() > 1)
+            parts.push_back(std::move(part));
     } else if (type == wkbMultiLineString || type == wkbGeometryCollection) {
         const auto* collection = geometry.toGeometryCollection();
         for (int i = 0; i < collection->getNumGeometries(); ++i)
@@ -55,7 +56,8 @@ std::vector<Part> read_parts(OGRLayer& layer) {
     layer.ResetReading();
     for (auto& feature : layer) {
         const OGRGeometry* geometry = feature->GetGeometryRef();
-        if (geometry != nullptr) collect(*geometry, parts);
+        if (geometry != nullptr)
+            collect(*geometry, parts);
     }
     return parts;
 }
@@ -73,10 +75,10 @@ Part join(std::vector<Part> parts, const std::string& file) {
         int how = 0;
         for (std::size_t i = 0; i < parts.size(); ++i)
             for (std::size_t k = i + 1; k < parts.size(); ++k) {
-                const std::array<double, 4> gaps{
-                    apart(parts[i].back(), parts[k].front()), apart(parts[i].back(), parts[k].back()),
-                    apart(parts[i].front(), parts[k].back()),
-                    apart(parts[i].front(), parts[k].front())};
+                const std::array<double, 4> gaps{apart(parts[i].back(), parts[k].front()),
+                                                 apart(parts[i].back(), parts[k].back()),
+                                                 apart(parts[i].front(), parts[k].back()),
+                                                 apart(parts[i].front(), parts[k].front())};
                 for (int h = 0; h < 4; ++h)
                     if (gaps[static_cast<std::size_t>(h)] < best_m) {
                         best_m = gaps[static_cast<std::size_t>(h)];
@@ -90,11 +92,13 @@ Part join(std::vector<Part> parts, const std::string& file) {
                             " line parts do not meet (the nearest ends are " +
                             text::fixed(best_m, 1) +
                             " m apart); give one connected line along the cable"};
-        if (how == 1 || how == 3) std::reverse(parts[b].begin(), parts[b].end());
+        if (how == 1 || how == 3)
+            std::reverse(parts[b].begin(), parts[b].end());
         Part& first = how < 2 ? parts[a] : parts[b];
         const Part& second = how < 2 ? parts[b] : parts[a];
         first.insert(first.end(), second.begin(), second.end());
-        if (how >= 2) parts[a] = std::move(parts[b]);
+        if (how >= 2)
+            parts[a] = std::move(parts[b]);
         parts.erase(parts.begin() + static_cast<std::ptrdiff_t>(b));
     }
     return parts.front();
@@ -108,24 +112,26 @@ LineFromFile read_line(const std::filesystem::path& file, const std::string& fal
     const QuietGdal quiet;
     const std::array<const char*, 7> drivers{"GPKG", "GeoJSON", "ESRI Shapefile", "FlatGeobuf",
                                              "KML",  "GPX",     nullptr};
-    const std::unique_ptr<GDALDataset, CloseDataset> dataset{
-        GDALDataset::Open(file.c_str(), GDAL_OF_VECTOR | GDAL_OF_READONLY, drivers.data(), nullptr,
-                          nullptr)};
+    const std::unique_ptr<GDALDataset, CloseDataset> dataset{GDALDataset::Open(
+        file.c_str(), GDAL_OF_VECTOR | GDAL_OF_READONLY, drivers.data(), nullptr, nullptr)};
     if (!dataset)
-        throw DataError{file.string() + ": cannot be read as GeoPackage, GeoJSON, Shapefile, "
-                                        "FlatGeobuf, KML or GPX; correct " +
+        throw DataError{file.string() +
+                        ": cannot be read as GeoPackage, GeoJSON, Shapefile, "
+                        "FlatGeobuf, KML or GPX; correct " +
                         key};
     LineFromFile line;
     std::vector<Part> parts;
     for (OGRLayer* layer : dataset->GetLayers()) {
         std::vector<Part> found = read_parts(*layer);
-        if (found.empty()) continue;
+        if (found.empty())
+            continue;
         std::string crs = fallback_crs;
         if (const OGRSpatialReference* reference = layer->GetSpatialRef()) {
             char* wkt = nullptr;
             const std::array<const char*, 2> options{"FORMAT=WKT2_2019", nullptr};
             reference->exportToWkt(&wkt, options.data());
-            if (wkt != nullptr && *wkt != '\0') crs = wkt;
+            if (wkt != nullptr && *wkt != '\0')
+                crs = wkt;
             CPLFree(wkt);
         } else {
             line.warnings.push_back({"line-without-crs", file.string() +
@@ -163,14 +169,16 @@ LineFromFile read_line(const std::filesystem::path& file, const std::string& fal
 Polyline::Polyline(const PointsXY& xy, const Eigen::ArrayXd& z) {
     std::vector<Eigen::Index> kept{0};
     for (Eigen::Index i = 1; i < xy.rows(); ++i)
-        if ((xy.row(i) - xy.row(kept.back())).matrix().norm() > 1e-6) kept.push_back(i);
+        if ((xy.row(i) - xy.row(kept.back())).matrix().norm() > 1e-6)
+            kept.push_back(i);
     const auto n = static_cast<Eigen::Index>(kept.size());
     m_xy.resize(n, 2);
     m_z = Eigen::ArrayXd::Constant(n, nan);
     m_measure = Eigen::ArrayXd::Zero(n);
     for (Eigen::Index i = 0; i < n; ++i) {
         m_xy.row(i) = xy.row(kept[static_cast<std::size_t>(i)]);
-        if (z.size() == xy.rows()) m_z(i) = z(kept[static_cast<std::size_t>(i)]);
+        if (z.size() == xy.rows())
+            m_z(i) = z(kept[static_cast<std::size_t>(i)]);
     }
     m_along_slope = m_z.isFinite().all();
     for (Eigen::Index i = 1; i < n; ++i) {
@@ -218,7 +226,8 @@ Nearest Polyline::nearest(double x, double y) const {
     Nearest best = on_piece(0, x, y);
     for (Eigen::Index k = 1; k + 1 < m_xy.rows(); ++k) {
         const Nearest here = on_piece(k, x, y);
-        if (std::abs(here.offset_m) < std::abs(best.offset_m)) best = here;
+        if (std::abs(here.offset_m) < std::abs(best.offset_m))
+            best = here;
     }
     return best;
 }
@@ -226,16 +235,21 @@ Nearest Polyline::nearest(double x, double y) const {
 std::vector<Nearest> Polyline::near_places(double x, double y, double within_m) const {
     const Eigen::Index n = m_xy.rows() - 1;
     std::vector<Nearest> all;
-    for (Eigen::Index k = 0; k < n; ++k) all.push_back(on_piece(k, x, y));
+    for (Eigen::Index k = 0; k < n; ++k)
+        all.push_back(on_piece(k, x, y));
     double best = std::numeric_limits<double>::infinity();
-    for (const auto& place : all) best = std::min(best, std::abs(place.offset_m));
+    for (const auto& place : all)
+        best = std::min(best, std::abs(place.offset_m));
     std::vector<Nearest> places;
     for (Eigen::Index k = 0; k < n; ++k) {
         const auto i = static_cast<std::size_t>(k);
         const double here = std::abs(all[i].offset_m);
-        if (here > best + within_m) continue;
-        if (k > 0 && std::abs(all[i - 1].offset_m) <= here) continue;
-        if (k + 1 < n && std::abs(all[i + 1].offset_m) < here) continue;
+        if (here > best + within_m)
+            continue;
+        if (k > 0 && std::abs(all[i - 1].offset_m) <= here)
+            continue;
+        if (k + 1 < n && std::abs(all[i + 1].offset_m) < here)
+            continue;
         places.push_back(all[i]);
     }
     return places;

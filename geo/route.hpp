@@ -19,8 +19,8 @@ struct LineFromFile {
     Warnings warnings;
 };
 
-/// Reads the line of a GeoPackage, GeoJSON, Shapefile, FlatGeobuf, KML or GPX file. Only local files
-/// and these drivers; a file without a coordinate system is taken in `fallback_crs`.
+/// Reads the line of a GeoPackage, GeoJSON, Shapefile, FlatGeobuf, KML or GPX file. Only local
+/// files and these drivers; a file without a coordinate system is taken in `fallback_crs`.
 /// @param key  names where the file was said, for messages
 /// @throws DataError if there is no line, or its parts do not meet
 LineFromFile read_line(const std::filesystem::path& file, const std::string& fallback_crs,
@@ -50,7 +50,8 @@ public:
     Eigen::Vector2d direction_at(double measure_m) const;
     /// The nearest place of the whole line.
     Nearest nearest(double x, double y) const;
-    /// All places that are nearer than their surroundings, up to `within_m` farther than the nearest.
+    /// All places that are nearer than their surroundings, up to `within_m` farther than the
+    /// nearest.
     std::vector<Nearest> near_places(double x, double y, double within_m) const;
     Polyline reversed() const;
 

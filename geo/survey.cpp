@@ -29,12 +29,14 @@ CableMarks read_cable_marks(const std::filesystem::path& file) {
     std::vector<std::array<double, 2>> pairs;
     for (std::size_t i = 0; i < table.rows.size(); ++i) {
         const auto c = table.number(i, *cable), f = table.number(i, *fibre);
-        if (c && f) pairs.push_back({*c, *f});
+        if (c && f)
+            pairs.push_back({*c, *f});
     }
     if (pairs.size() < 2)
-        throw DataError{file.string() +
-                        ": at least two pairs of cable_m and fibre_m tell offset and direction; add "
-                        "pairs"};
+        throw DataError{
+            file.string() +
+            ": at least two pairs of cable_m and fibre_m tell offset and direction; add "
+            "pairs"};
     double mc = 0.0, mf = 0.0, scc = 0.0, scf = 0.0;
     const auto n = static_cast<double>(pairs.size());
     for (const auto& [c, f] : pairs) {
@@ -45,12 +47,14 @@ CableMarks read_cable_marks(const std::filesystem::path& file) {
         scc += (c - mc) * (c - mc);
         scf += (c - mc) * (f - mf);
     }
-    if (scc <= 0.0) throw DataError{file.string() + ": all pairs stand at one mark; add others"};
+    if (scc <= 0.0)
+        throw DataError{file.string() + ": all pairs stand at one mark; add others"};
     CableMarks marks;
     marks.rate = scf / scc;
     marks.offset_m = mf - marks.rate * mc;
     double rest = 0.0;
-    for (const auto& [c, f] : pairs) rest += std::pow(f - marks.offset_m - marks.rate * c, 2);
+    for (const auto& [c, f] : pairs)
+        rest += std::pow(f - marks.offset_m - marks.rate * c, 2);
     marks.sd_m = n > 2.0 ? std::sqrt(rest / (n - 2.0)) : 0.5;
     if (std::abs(std::abs(marks.rate) - 1.0) > 0.1)
         throw DataError{file.string() + ": the pairs say " + text::fixed(marks.rate, 3) +
@@ -97,7 +101,8 @@ private:
         m_y = m_table.column("y");
         if (!m_fibre || !m_x || !m_y) {
             std::string list;
-            for (const auto& name : m_table.header) list += (list.empty() ? "" : ", ") + name;
+            for (const auto& name : m_table.header)
+                list += (list.empty() ? "" : ", ") + name;
             throw DataError{m_table.file.string() +
                             ":1: needs the columns fibre_m (or cable_m), x and y; it has " + list};
         }
@@ -130,7 +135,8 @@ private:
                             " m; a standard deviation is not negative"};
         tie.sd_m = std::max(tie.sd_m, 0.01);
         tie.label = m_label ? m_table.rows[i][*m_label] : "";
-        if (tie.label.empty()) tie.label = "tie " + std::to_string(m_survey.points.size() + 1);
+        if (tie.label.empty())
+            tie.label = "tie " + std::to_string(m_survey.points.size() + 1);
         m_survey.points.push_back(tie);
     }
 
@@ -149,9 +155,9 @@ private:
         const auto without = std::count_if(m_survey.points.begin(), m_survey.points.end(),
                                            [](const TiePoint& tie) { return !tie.sd_said; });
         if (without > 0)
-            m_survey.warnings.push_back({"tie-default-sd",
-                                         std::to_string(without) + " tie points have no sd_m; " +
-                                             text::number(default_tie_sd_m) + " m was taken"});
+            m_survey.warnings.push_back(
+                {"tie-default-sd", std::to_string(without) + " tie points have no sd_m; " +
+                                       text::number(default_tie_sd_m) + " m was taken"});
     }
 
     const campaign::Placement& m_placement;
@@ -165,7 +171,8 @@ private:
 } // namespace
 
 Survey read_survey(const campaign::Campaign& campaign) {
-    if (campaign.placement->tie_points.empty()) return {};
+    if (campaign.placement->tie_points.empty())
+        return {};
     return SurveyReader{*campaign.placement}.read();
 }
 

@@ -13,7 +13,7 @@ namespace rillstrand::geo {
 /// A fibre distance whose coordinates were surveyed.
 struct TiePoint {
     std::string label;
-    std::string place;     ///< `file:line`, for messages
+    std::string place; ///< `file:line`, for messages
     double fibre_m = 0.0;
     double fibre_sd_m = 0.0; ///< of the mark on the fibre
     double x = 0.0, y = 0.0; ///< in the survey's system
@@ -27,8 +27,8 @@ struct Survey {
     Warnings warnings;
 };
 
-/// What is taken for a tie point without sd_m: a handheld receiver under an open sky (common practice,
-/// no source).
+/// What is taken for a tie point without sd_m: a handheld receiver under an open sky (common
+/// practice, no source).
 inline constexpr double default_tie_sd_m = 2.0;
 
 /// Reads the tie points from delimited text or a vector file.

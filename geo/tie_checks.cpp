@@ -15,15 +15,16 @@ constexpr double margin_deg = 1.5;
 
 bool inside(const std::array<double, 4>& area, double lon, double lat) {
     const auto in_lon = [&](double l) {
-        return area[0] <= area[2]
-                   ? l >= area[0] - margin_deg && l <= area[2] + margin_deg
-                   : l >= area[0] - margin_deg || l <= area[2] + margin_deg;
+        return area[0] <= area[2] ? l >= area[0] - margin_deg && l <= area[2] + margin_deg
+                                  : l >= area[0] - margin_deg || l <= area[2] + margin_deg;
     };
     return std::isfinite(lon) && lat >= area[1] - margin_deg && lat <= area[3] + margin_deg &&
            (in_lon(lon) || in_lon(lon + 360.0) || in_lon(lon - 360.0));
 }
 
-std::string shown(double x, double y) { return text::number(x) + ", " + text::number(y); }
+std::string shown(double x, double y) {
+    return text::number(x) + ", " + text::number(y);
+}
 
 } // namespace
 
@@ -51,7 +52,8 @@ PointsXY checked_lonlat(const std::vector<TiePoint>& points, const Crs& crs,
             crs.geographic() && (std::abs(xy(i, 0)) > 360.0 || std::abs(xy(i, 1)) > 90.0);
         const bool good = !degrees_wrong && (area ? inside(*area, lonlat(i, 0), lonlat(i, 1))
                                                   : std::isfinite(lonlat(i, 0)));
-        if (good) continue;
+        if (good)
+            continue;
         if (problems.list().size() >= 10) {
             ++more;
             continue;
@@ -70,7 +72,8 @@ PointsXY checked_lonlat(const std::vector<TiePoint>& points, const Crs& crs,
                           ? "; these look like degrees: set placement.crs to \"EPSG:4326\""
                           : "; correct placement.crs (zone?) or the coordinates"));
     }
-    if (more > 0) problems.add("and " + std::to_string(more) + " more tie points");
+    if (more > 0)
+        problems.add("and " + std::to_string(more) + " more tie points");
     problems.throw_if_any();
     return lonlat;
 }
@@ -79,18 +82,25 @@ void refuse_wrong_unit(const std::vector<double>& ground_m, const std::vector<do
                        const std::string& file) {
     std::vector<double> ratios;
     for (std::size_t i = 0; i < ground_m.size(); ++i)
-        if (ground_m[i] > 0.0) ratios.push_back(cable_m[i] / ground_m[i]);
-    if (ratios.size() < 2) return;
+        if (ground_m[i] > 0.0)
+            ratios.push_back(cable_m[i] / ground_m[i]);
+    if (ratios.size() < 2)
+        return;
     const auto middle = ratios.begin() + static_cast<std::ptrdiff_t>(ratios.size() / 2);
     std::nth_element(ratios.begin(), middle, ratios.end());
     const double ratio = *middle;
     const auto near = [ratio](double value) { return std::abs(ratio / value - 1.0) < 0.15; };
     std::string hint;
-    if (near(3.2808)) hint = "fibre distances look like feet: see record.distance_unit and fibre_m";
-    if (near(0.3048)) hint = "coordinates look like feet: choose a coordinate system in feet";
-    if (near(1000.0)) hint = "coordinates look like kilometres; give them in the system's unit";
-    if (near(0.001)) hint = "fibre distances look like kilometres; give fibre_m in metres";
-    if (hint.empty()) return;
+    if (near(3.2808))
+        hint = "fibre distances look like feet: see record.distance_unit and fibre_m";
+    if (near(0.3048))
+        hint = "coordinates look like feet: choose a coordinate system in feet";
+    if (near(1000.0))
+        hint = "coordinates look like kilometres; give them in the system's unit";
+    if (near(0.001))
+        hint = "fibre distances look like kilometres; give fibre_m in metres";
+    if (hint.empty())
+        return;
     throw DataError{file + ": there are " + text::number(std::round(ratio * 1000.0) / 1000.0) +
                     " fibre metres to a ground metre; " + hint};
 }

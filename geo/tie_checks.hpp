@@ -9,8 +9,8 @@ namespace rillstrand::geo {
 /// Coordinates of the tie points as x, y rows.
 PointsXY coordinates_of(const std::vector<TiePoint>& points);
 
-/// Refuses coordinates that cannot be in their system: degrees beyond their range, points outside the
-/// area of use, x and y exchanged.
+/// Refuses coordinates that cannot be in their system: degrees beyond their range, points outside
+/// the area of use, x and y exchanged.
 /// @return longitude and latitude
 /// @throws DataError with all problems
 PointsXY checked_lonlat(const std::vector<TiePoint>& points, const Crs& crs,

@@ -1,6 +1,8 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "stats/path_smoother.hpp"
 
+#include <Eigen/LU>
+
 #include <algorithm>
 #include <cmath>
 #include <numbers>
@@ -41,7 +43,8 @@ State start_state(const PathData& data, const PathPrior& prior) {
 }
 
 void predict(State& state, double step, const WalkSize& size) {
-    if (step <= 0.0) return;
+    if (step <= 0.0)
+        return;
     const Matrix f = transition(step);
     state.mean = f * state.mean;
     state.covariance = f * state.covariance * f.transpose() + noise_of(size, step);
@@ -49,7 +52,8 @@ void predict(State& state, double step, const WalkSize& size) {
 
 /// @return log density of the observation given the past
 double update(State& state, double value, double variance) {
-    if (!std::isfinite(variance)) return 0.0;
+    if (!std::isfinite(variance))
+        return 0.0;
     const double s = state.covariance(0, 0) + variance;
     const double surprise = value - state.mean(0);
     const Vector gain = state.covariance.col(0) / s;
@@ -76,7 +80,8 @@ WalkSize size_of(const PathPrior& prior, double log_rate_step, double log_white_
 /// The likelihood needs no more than this many observations to tell the sizes.
 PathData head_of(const PathData& data) {
     constexpr Eigen::Index enough = 4000;
-    if (data.at.size() <= enough) return data;
+    if (data.at.size() <= enough)
+        return data;
     return {data.at.head(enough), data.value.head(enough), data.variance.head(enough)};
 }
 
@@ -87,10 +92,13 @@ double path_log_likelihood(const PathData& data, const PathPrior& prior, const W
     double sum = 0.0;
     bool first = true;
     for (Eigen::Index i = 0; i < data.at.size(); ++i) {
-        if (i > 0) predict(state, data.at(i) - data.at(i - 1), size);
+        if (i > 0)
+            predict(state, data.at(i) - data.at(i - 1), size);
         const double density = update(state, data.value(i), data.variance(i));
-        if (!first) sum += density;
-        if (std::isfinite(data.variance(i))) first = false;
+        if (!first)
+            sum += density;
+        if (std::isfinite(data.variance(i)))
+            first = false;
     }
     return sum;
 }
@@ -118,7 +126,8 @@ PathEstimate smooth_path(const PathData& data, const PathPrior& prior, const Wal
     std::vector<State> filtered(steps.size());
     State state = start_state(data, prior);
     for (std::size_t t = 0; t < steps.size(); ++t) {
-        if (t > 0) predict(state, steps[t].at - steps[t - 1].at, size);
+        if (t > 0)
+            predict(state, steps[t].at - steps[t - 1].at, size);
         if (steps[t].observation >= 0)
             update(state, data.value(steps[t].observation), data.variance(steps[t].observation));
         filtered[t] = state;
@@ -135,11 +144,13 @@ PathEstimate smooth_path(const PathData& data, const PathPrior& prior, const Wal
                                     ahead.covariance.inverse();
                 const State next = smoothed;
                 smoothed.mean = filtered[t].mean + gain * (next.mean - ahead.mean);
-                smoothed.covariance = filtered[t].covariance +
-                                      gain * (next.covariance - ahead.covariance) * gain.transpose();
+                smoothed.covariance =
+                    filtered[t].covariance +
+                    gain * (next.covariance - ahead.covariance) * gain.transpose();
             }
         }
-        if (steps[t].query < 0) continue;
+        if (steps[t].query < 0)
+            continue;
         out.mean(steps[t].query) = smoothed.mean(0);
         out.variance(steps[t].query) = std::max(0.0, smoothed.covariance(0, 0));
         out.rate(steps[t].query) = smoothed.mean(1);
@@ -149,7 +160,8 @@ PathEstimate smooth_path(const PathData& data, const PathPrior& prior, const Wal
 
 std::vector<WeightedSize> walk_sizes(const std::vector<PathData>& series, const PathPrior& prior) {
     std::vector<PathData> heads;
-    for (const auto& data : series) heads.push_back(head_of(data));
+    for (const auto& data : series)
+        heads.push_back(head_of(data));
     constexpr int half = 5; // grid of 11 x 11 over +-2.5 sd of the belief
     std::vector<WeightedSize> grid;
     double best = -INFINITY;
@@ -159,7 +171,8 @@ std::vector<WeightedSize> walk_sizes(const std::vector<PathData>& series, const 
             const double white = prior.log_white_step + 0.5 * k * prior.log_white_step_sd;
             const WalkSize size = size_of(prior, rate, white);
             double log_belief = log_prior(prior, rate, white);
-            for (const auto& data : heads) log_belief += path_log_likelihood(data, prior, size);
+            for (const auto& data : heads)
+                log_belief += path_log_likelihood(data, prior, size);
             grid.push_back({size, log_belief});
             best = std::max(best, log_belief);
         }
@@ -176,7 +189,8 @@ std::vector<WeightedSize> walk_sizes(const std::vector<PathData>& series, const 
             kept.push_back(node);
             kept_sum += node.weight;
         }
-    for (auto& node : kept) node.weight /= kept_sum;
+    for (auto& node : kept)
+        node.weight /= kept_sum;
     return kept;
 }
 
@@ -210,8 +224,7 @@ LeftOut leave_one_out(const PathData& data, const PathPrior& prior,
         out.predicted += node.weight * means.back();
     }
     for (std::size_t k = 0; k < sizes.size(); ++k)
-        out.variance +=
-            sizes[k].weight * (variances[k] + (means[k] - out.predicted).square());
+        out.variance += sizes[k].weight * (variances[k] + (means[k] - out.predicted).square());
     return out;
 }
 

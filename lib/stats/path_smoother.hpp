@@ -25,11 +25,11 @@ struct PathData {
 struct PathPrior {
     double rate_mean = 0.0;
     double rate_sd = 1.0;
-    double log_rate_step = 0.0;   ///< log of the sd by which the rate wanders over `scale`
+    double log_rate_step = 0.0; ///< log of the sd by which the rate wanders over `scale`
     double log_rate_step_sd = 1.0;
-    double log_white_step = 0.0;  ///< log of the sd of the own walk over `scale`
+    double log_white_step = 0.0; ///< log of the sd of the own walk over `scale`
     double log_white_step_sd = 1.0;
-    double scale = 100.0;         ///< length of path on which the two steps are stated
+    double scale = 100.0; ///< length of path on which the two steps are stated
 };
 
 /// Smoothed values and their variance at places.

@@ -36,12 +36,7 @@ public:
         m_hold_rows = static_cast<std::size_t>(
             chunk_rows(m_head.interval_s, m_head.distance_m.size(), sizeof(float)));
         // A folder that cannot be written is told now and not after the first rows.
-        try {
-            RowsFile{m_path, m_head, Packing::floating};
-        } catch (...) {
-            remove_files();
-            throw;
-        }
+        RowsFile{m_path, m_head, Packing::floating};
     }
     Data(const Data&) = delete;
     Data& operator=(const Data&) = delete;
@@ -49,8 +44,11 @@ public:
     Data& operator=(Data&&) = delete;
     ~Data() {
         m_file.reset();
-        if (!m_finished)
-            remove_files();
+        if (m_finished)
+            return;
+        std::error_code ignored;
+        std::filesystem::remove(m_path, ignored);
+        std::filesystem::remove(wider_path(), ignored);
     }
 
     void add_row(double time_s, const std::vector<Eigen::ArrayXf>& rows) {
@@ -94,12 +92,6 @@ public:
 private:
     static Packing next_wider(Packing packing) {
         return packing == Packing::hundredths ? Packing::thousandths : Packing::floating;
-    }
-
-    void remove_files() const {
-        std::error_code ignored;
-        std::filesystem::remove(m_path, ignored);
-        std::filesystem::remove(wider_path(), ignored);
     }
 
     std::filesystem::path wider_path() const {

@@ -58,14 +58,14 @@ inline double whole(double x) {
 
 bool returns_as(double scale, double most, std::span<const float> values) {
     const double per_unit = 1.0 / scale;
-    std::size_t wrong = 0;
+    bool all = true;
     for (const float v : values) {
         const double x = static_cast<double>(v) * per_unit;
         const double k = whole(x);
-        const bool back = std::abs(k) <= most && static_cast<float>(k * scale) == v;
-        wrong += back || v != v ? 0 : 1; // NaN: missing
+        const bool back = (std::abs(k) <= most) & (static_cast<float>(k * scale) == v);
+        all &= back | (v != v); // NaN: missing
     }
-    return wrong == 0;
+    return all;
 }
 
 template <typename Item>

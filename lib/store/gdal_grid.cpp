@@ -260,10 +260,6 @@ Decoding decoding_of(const Array& array) {
         decoding.fills[2] = static_cast<double>(9.9692099683868690e36F);
     if (type == GDT_Float64)
         decoding.fills[2] = 9.9692099683868690e36;
-    for (std::size_t k = 1; k < decoding.fills.size(); ++k) // each once
-        for (std::size_t earlier = 0; earlier < k; ++earlier)
-            if (decoding.fills[k] == decoding.fills[earlier])
-                decoding.fills[k] = nan;
     if (const auto low = plain("valid_min"))
         decoding.low = *low;
     if (const auto high = plain("valid_max"))

@@ -65,13 +65,11 @@ Heads read_heads(const campaign::Record& record, const std::vector<fs::path>& fi
     return heads;
 }
 
-using RowMajor = Eigen::Array<float, Eigen::Dynamic, Eigen::Dynamic, Eigen::RowMajor>;
-
 /// Consecutive rows of one file, read with all columns.
 struct Rows {
     std::uint32_t file = 0;
     Eigen::Index first = 0;
-    std::vector<RowMajor> values; ///< one a quantity
+    std::vector<Eigen::ArrayXXf> values; ///< one a quantity
     bool holds(const Place& place) const {
         return place.file == file && place.row >= first &&
                place.row < first + values.front().rows();
@@ -92,7 +90,7 @@ public:
         trace.origin = m_files[place.file].string() + " (trace " + std::to_string(place.row) + ")";
         const Eigen::Index i = static_cast<Eigen::Index>(place.row) - rows.first;
         const Eigen::ArrayXd& other_m = m_heads.other_m[place.file];
-        for (const RowMajor& values : rows.values) {
+        for (const Eigen::ArrayXXf& values : rows.values) {
             Eigen::ArrayXf row = values.row(i);
             if (other_m.size() > 0)
                 row = record::on_axis(other_m, row, m_heads.distance_m, m_record.align);
@@ -125,14 +123,12 @@ private:
         const Eigen::Index width = std::min(grid.block_columns(), axes.n_place());
         const Eigen::Index pieces = (axes.n_place() + width - 1) / width;
         for (const auto quantity : m_heads.quantities) {
-            RowMajor& values = rows.values.emplace_back(count, axes.n_place());
+            Eigen::ArrayXXf& values = rows.values.emplace_back(count, axes.n_place());
             tbb::parallel_for(Eigen::Index{0}, pieces, [&](Eigen::Index piece) {
                 const Eigen::Index j = piece * width;
                 const Eigen::Index columns = std::min(width, axes.n_place() - j);
                 record::CellCounts counts;
-                Eigen::ArrayXXf part(count, columns);
-                grid.read(quantity, rows.first, j, part, counts);
-                values.middleCols(j, columns) = part;
+                grid.read(quantity, rows.first, j, values.middleCols(j, columns), counts);
                 const std::lock_guard lock{m_mutex};
                 m_counts.add(counts);
             });

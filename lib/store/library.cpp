@@ -21,10 +21,6 @@ std::recursive_mutex& library_mutex() {
 }
 
 LibraryLock::LibraryLock() : m_lock{library_mutex()} {
-    // HDF5's own clean-up at exit runs into freed memory where a file could not be closed (a full
-    // disk); every file is closed here by its owner, so that nothing is left for it to do.
-    static const herr_t no_clean_up_at_exit = H5dont_atexit();
-    static_cast<void>(no_clean_up_at_exit);
     H5Eset_auto2(H5E_DEFAULT, nullptr, nullptr);
 }
 
@@ -83,7 +79,6 @@ void H5File::must(bool ok, const char* doing) const {
 }
 
 H5File H5File::create(const std::filesystem::path& path) {
-    const LibraryLock lock;
     // netCDF-C gives the order of creation to dimensions and variables, and asks for it when
     // the file is opened for changes.
     const Handle created{H5Pcreate(H5P_FILE_CREATE), H5Pclose};
@@ -97,7 +92,6 @@ H5File H5File::create(const std::filesystem::path& path) {
 }
 
 H5File H5File::reopen(const std::filesystem::path& path) {
-    const LibraryLock lock;
     const Handle access{H5Pcreate(H5P_FILE_ACCESS), H5Pclose};
     H5Pset_fclose_degree(access.get(), H5F_CLOSE_STRONG);
     H5File file{path, {H5Fopen(path.c_str(), H5F_ACC_RDWR, access.get()), H5Fclose}};

@@ -10,7 +10,6 @@
 #include <algorithm>
 #include <array>
 #include <cmath>
-#include <limits>
 #include <numeric>
 
 namespace rillstrand::store {
@@ -63,7 +62,7 @@ bool put_real(const H5File& file, const std::string& name, const Eigen::ArrayXd&
         make_channel_variable(file, name, H5T_IEEE_F64LE, &fill_float64, attributes);
     const Eigen::ArrayXd stored = values.isFinite().select(values, fill_float64);
     file.write(made.get(), H5T_NATIVE_DOUBLE, stored.data());
-    double low = std::numeric_limits<double>::infinity(), high = -low;
+    double low = INFINITY, high = -INFINITY;
     for (const double v : values)
         if (std::isfinite(v)) {
             low = std::min(low, v);

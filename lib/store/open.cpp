@@ -70,12 +70,6 @@ public:
         open_tiles(std::move(grid), arrays, general_path_only);
         set_axes(std::move(axes));
         cells = std::make_unique<record::CellReader>(record, unit, '.');
-        range_c = record.valid_range_c;
-        plain_degC = unit == campaign::TemperatureUnit::degC &&
-                     std::none_of(record.missing.begin(), record.missing.end(), [&](const auto& m) {
-                         const auto number = text::parse_number(m);
-                         return number && *number >= range_c[0] && *number <= range_c[1];
-                     });
     }
 
     const Channelled& of(Quantity quantity) const {
@@ -107,28 +101,8 @@ public:
                              from.decoding, Target<Value>{at, column_step, row_step});
     }
 
-    /// Sets what lies outside the valid range missing, where the numbers are degC already.
-    void check_in_place(Eigen::Ref<Eigen::ArrayXXf> values, record::CellCounts& counts) const {
-        const auto low = static_cast<float>(range_c[0]), high = static_cast<float>(range_c[1]);
-        for (Eigen::Index j = 0; j < values.cols(); ++j) {
-            float* column = values.col(j).data();
-            std::int64_t good = 0;
-            for (Eigen::Index i = 0; i < values.rows(); ++i)
-                good += column[i] >= low && column[i] <= high ? 1 : 0;
-            counts.values += good;
-            if (good == values.rows())
-                continue;
-            for (Eigen::Index i = 0; i < values.rows(); ++i)
-                if (!(column[i] >= low && column[i] <= high)) {
-                    column[i] = cells->temperature(static_cast<double>(column[i]), counts);
-                }
-        }
-    }
-
     std::filesystem::path file;
     GridHead head;
-    std::array<double, 2> range_c{};
-    bool plain_degC = false; ///< no unit to change and no number for 'missing' inside the range
     bool time_first = true;
     bool fast = false;
     campaign::TemperatureUnit unit = campaign::TemperatureUnit::degC;
@@ -219,12 +193,6 @@ void Grid::read(Quantity quantity, Eigen::Index i_time, Eigen::Index j_place,
     if (quantity != Quantity::temperature) {
         m_data->read_stored(from, i_time, j_place, out.rows(), out.cols(), out.data(), 1,
                             out.outerStride());
-        return;
-    }
-    if (m_data->plain_degC) {
-        m_data->read_stored(from, i_time, j_place, out.rows(), out.cols(), out.data(), 1,
-                            out.outerStride());
-        m_data->check_in_place(out, counts);
         return;
     }
     Eigen::ArrayXXd stored(out.rows(), out.cols());

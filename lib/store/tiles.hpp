@@ -14,7 +14,7 @@ namespace rillstrand::store {
 
 /// What a stored number means: NaN if it equals a fill value or lies outside [low, high], else
 /// number * scale + offset.
-struct Decoding { // NOLINT(misc-non-private-member-variables-in-classes): plain numbers
+struct Decoding {
     double scale = 1.0;
     double offset = 0.0;
     std::array<double, 3> fills{std::numeric_limits<double>::quiet_NaN(),
@@ -25,41 +25,11 @@ struct Decoding { // NOLINT(misc-non-private-member-variables-in-classes): plain
 
     template <typename Stored, typename Value>
     void operator()(const Stored* stored, std::size_t n, Value* values) const {
-        const bool one_fill = fills[1] != fills[1] && fills[2] != fills[2];
-        const bool any_range = low > -std::numeric_limits<double>::infinity() ||
-                               high < std::numeric_limits<double>::infinity();
-        if (one_fill && !any_range)
-            decode_simple(stored, n, values);
-        else
-            decode_any(stored, n, values);
-    }
-
-private:
-    /// One fill value and no range, as most files have: a loop that becomes vectors.
-    template <typename Stored, typename Value>
-    void decode_simple(const Stored* __restrict stored, std::size_t n,
-                       Value* __restrict values) const {
-        const double factor = scale, shift = offset;
-        for (std::size_t i = 0; i < n; ++i)
-            values[i] = static_cast<Value>(static_cast<double>(stored[i]) * factor + shift);
-        const double least = static_cast<double>(std::numeric_limits<Stored>::lowest());
-        const double most = static_cast<double>(std::numeric_limits<Stored>::max());
-        if (!(fills[0] >= least && fills[0] <= most))
-            return; // no number of the file is that
-        const auto fill = static_cast<Stored>(fills[0]);
-        if (static_cast<double>(fill) != fills[0])
-            return;
-        for (std::size_t i = 0; i < n; ++i)
-            values[i] = stored[i] == fill ? std::numeric_limits<Value>::quiet_NaN() : values[i];
-    }
-
-    template <typename Stored, typename Value>
-    void decode_any(const Stored* stored, std::size_t n, Value* values) const {
         const Decoding d = *this;
         for (std::size_t i = 0; i < n; ++i) {
             const auto x = static_cast<double>(stored[i]);
-            const bool missing = (x == d.fills[0]) || (x == d.fills[1]) || (x == d.fills[2]) ||
-                                 (x < d.low) || (x > d.high);
+            const bool missing = (x == d.fills[0]) | (x == d.fills[1]) | (x == d.fills[2]) |
+                                 (x < d.low) | (x > d.high);
             const auto value = static_cast<Value>(x * d.scale + d.offset);
             values[i] = missing ? std::numeric_limits<Value>::quiet_NaN() : value;
         }

@@ -192,33 +192,3 @@ TEST_CASE("a broken canonical record is refused by name", "[store]") {
         }
     }
 }
-
-// Run by the case below in a process of its own, under a limit of the size of files.
-TEST_CASE("write until the disk is full", "[.disk-full]") {
-    const fs::path path = fs::path{RILLSTRAND_SCRATCH} / "full.nc";
-    std::mt19937 random{1};
-    const auto fill = [&] {
-        store::CanonicalWriter writer{path, head_of(500, 300.0)};
-        for (int i = 0; i < 4000; ++i) {
-            Eigen::ArrayXf row(500);
-            for (float& value : row)
-                value = static_cast<float>(random()) * 1e-8F;
-            writer.add_row(300.0 * i, {row});
-        }
-        writer.finish();
-    };
-    CHECK_THROWS_WITH(fill(), Contains("full.nc: cannot be written") && Contains("File too large"));
-    CHECK_FALSE(fs::exists(path));
-}
-
-TEST_CASE("a full disk ends in a message and a clean exit", "[store][bug]") {
-    const std::string self = fs::read_symlink("/proc/self/exe").string();
-    for (const char* kibibytes : {"0", "30", "1000"}) {
-        CAPTURE(kibibytes);
-        const Said said = run(std::string{"bash -c \"trap '' XFSZ; ulimit -f "} + kibibytes +
-                              "; exec '" + self + "' '[.disk-full]'\" | cat");
-        CHECK_THAT(said.text, Contains("All tests passed (2 assertions in 1 test case)") ||
-                                  Contains("making the file"));
-        CHECK_THAT(said.text, !Contains("SIGSEGV"));
-    }
-}

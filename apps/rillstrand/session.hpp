@@ -1,0 +1,44 @@
+// SPDX-License-Identifier: Apache-2.0
+#pragma once
+
+#include "placement.hpp"
+
+#include "base/error.hpp"
+#include "campaign/campaign.hpp"
+#include "quality/baths.hpp"
+#include "record/gather.hpp"
+#include "record/scan.hpp"
+#include "record/source.hpp"
+#include "stream/stream.hpp"
+
+#include <memory>
+#include <optional>
+#include <string>
+#include <vector>
+
+namespace rillstrand::app {
+
+/// What was found of one channel apart from numbers.
+struct ChannelNames {
+    std::vector<std::string> stretch; ///< empty where no stretch holds it
+    std::vector<std::string> setting;
+    std::vector<std::string> flag; ///< `ok`, or what is wrong, one word
+};
+
+/// All that one run has worked out so far; each stage fills its part.
+struct Session {
+    campaign::Campaign campaign;
+    record::GatherReport gathered;
+    std::unique_ptr<record::Source> source;
+    double spatial_response_m = 1.0;
+    std::optional<record::ScanSummary> scan;
+    std::vector<quality::BathResult> baths;
+    std::optional<geo::Placement> placement;
+    ChannelNames names;
+    std::vector<stream::StreamFindings> streams;
+    Warnings warnings;
+
+    const record::Axes& axes() const { return source->axes(); }
+};
+
+} // namespace rillstrand::app
