@@ -232,6 +232,7 @@ void gather_stage(Session& session, const Output& output, const Context& context
                                      context.now + " gathered by rillstrand " RILLSTRAND_VERSION,
                                      context.progress);
     session.source = store::open_canonical(record_nc);
+    session.record_axes = session.source->axes();
     session.warnings = session.gathered.warnings;
     name_channels(session);
     const record::Axes& axes = session.axes();

@@ -29,7 +29,8 @@ struct ChannelNames {
 struct Session {
     campaign::Campaign campaign;
     record::GatherReport gathered;
-    std::unique_ptr<record::Source> source;
+    std::unique_ptr<record::Source> source; ///< closed once everything is read
+    record::Axes record_axes;
     double spatial_response_m = 1.0;
     std::optional<record::ScanSummary> scan;
     std::vector<quality::BathResult> baths;
@@ -38,7 +39,7 @@ struct Session {
     std::vector<stream::StreamFindings> streams;
     Warnings warnings;
 
-    const record::Axes& axes() const { return source->axes(); }
+    const record::Axes& axes() const { return record_axes; }
 };
 
 } // namespace rillstrand::app
