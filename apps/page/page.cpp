@@ -4,6 +4,8 @@
 #include "page_parts.hpp"
 
 #include <cstdint>
+#include <utility>
+#include <vector>
 
 namespace rillstrand::page {
 
@@ -26,10 +28,19 @@ std::string for_script(const std::string& json) {
     return safe;
 }
 
-void replace(std::string& text, const std::string& mark, const std::string& with) {
-    const std::size_t at = text.find(mark);
-    if (at != std::string::npos)
-        text.replace(at, mark.size(), with);
+/// Puts texts in place of their marks in one pass: nothing that was put in is taken for a mark.
+std::string filled(const std::string& form,
+                   const std::vector<std::pair<std::string, std::string>>& texts) {
+    std::string out;
+    std::size_t at = 0;
+    for (const auto& [mark, text] : texts) {
+        const std::size_t found = form.find(mark, at);
+        if (found == std::string::npos)
+            continue;
+        out.append(form, at, found - at).append(text);
+        at = found + mark.size();
+    }
+    return out.append(form, at);
 }
 
 } // namespace
@@ -77,13 +88,10 @@ std::string base64(const std::string& bytes) {
 }
 
 std::string render(const std::string& title, const std::string& data_json) {
-    std::string html = page_html;
-    // The data go in last: nothing in them is taken for a mark.
-    replace(html, "{{style}}", page_css);
-    replace(html, "{{script}}", page_js);
-    replace(html, "{{title}}", escape_html(title));
-    replace(html, "{{data}}", for_script(data_json));
-    return html;
+    return filled(page_html, {{"{{title}}", escape_html(title)},
+                              {"{{style}}", page_css},
+                              {"{{data}}", for_script(data_json)},
+                              {"{{script}}", page_js}});
 }
 
 } // namespace rillstrand::page

@@ -1,0 +1,14 @@
+// SPDX-License-Identifier: Apache-2.0
+import 'leaflet/dist/leaflet.css';
+import 'uplot/dist/uPlot.min.css';
+import './page.css';
+import { profiles } from './charts';
+import { moveTo } from './data';
+import { map } from './map';
+import { picture } from './picture';
+import { header, others, stream, trust } from './sections';
+
+document.getElementById('head')!.append(...header());
+const main = document.getElementById('main')!;
+main.append(...([map(), picture(), ...profiles(), ...stream(), ...others(), ...trust()].filter(Boolean) as Node[]));
+moveTo({});

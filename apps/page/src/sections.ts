@@ -1,0 +1,93 @@
+// SPDX-License-Identifier: Apache-2.0
+// What was found and how sure it is, in words and tables; panels without data are absent.
+import { chart } from './charts';
+import { data, el, findings, isolated, list, metres, moveTo, num, percent, pm, Row } from './data';
+
+function table(heads: string[], rows: (string | HTMLElement)[][], caption: string): HTMLElement {
+    return el('div', { class: 'scroll', tabindex: '0', role: 'region', 'aria-label': caption }, el('table', {}, el('caption', {}, caption),
+        el('thead', {}, el('tr', {}, ...heads.map(h => el('th', { scope: 'col' }, h)))),
+        el('tbody', {}, ...rows.map(r => el('tr', {}, ...r.map(c => el('td', {}, c)))))));
+}
+function panel(id: string, title: string, ...kids: (Node | null | false | undefined)[]): HTMLElement {
+    return el('section', { 'aria-labelledby': id, class: 'wide' }, el('h2', { id }, title), ...(kids.filter(Boolean) as Node[]));
+}
+const facts = (pairs: [string, string][]) => el('dl', {}, ...pairs.flatMap(([k, v]) => [el('dt', {}, k), el('dd', {}, v)]));
+const texts = (items: string[]) => el('ul', {}, ...items.map(t => el('li', {}, t)));
+const sentence = (w: any) => (typeof w === 'string' ? w : String(w?.text ?? ''));
+
+export function header(): HTMLElement[] {
+    const r = findings.record ?? {}, key: HTMLElement[] = [];
+    const card = (big: string, small: string) => key.push(el('div', { class: 'card' }, el('strong', {}, big), el('span', {}, small)));
+    for (const s of list(findings.stream)) {
+        const found = list(s.inflows);
+        const limit = s.detection_limit_fraction == null ? 'not resolvable here: too little contrast' : `smallest share that would show: ${percent(s.detection_limit_fraction)}`;
+        card(found.length ? `${found.length} inflow${found.length > 1 ? 's' : ''}` : 'Nothing found', `${isolated(s.stretch)} \u00b7 ${found.length ? 'largest ' + largest(found) + ' \u00b7 ' : ''}${limit}`);
+    }
+    for (const s of list(findings.snow)) card('Snow', `${isolated(s.stretch)} \u00b7 ${list(s.channels).length} channels, ${list(s.cover).length} days`);
+    for (const s of list(findings.column)) card('Water column', isolated(s.name));
+    for (const s of list(findings.bed)) card('Streambed', isolated(s.name));
+    if (findings.placement) card('\u00b1\u202f' + metres(findings.placement.position_sd_m), 'position, middle channel (1 sd)');
+    card('\u00b1\u202f' + num(findings.quality?.noise_c, 3, '\u00b0C'), 'noise, middle channel (1 sd)');
+    const when = r.first ? `${String(r.first).slice(0, 16).replace('T', ' ')} to ${String(r.last).slice(0, 16).replace('T', ' ')} UTC \u00b7 ${r.traces} traces \u00d7 ${r.channels} channels` : '';
+    return [el('p', { class: 'over' }, 'Fibre temperatures: what was found, where, how sure'), el('h1', { dir: 'auto' }, String(findings.campaign?.name || 'Campaign')),
+        ...(findings.campaign?.summary ? [el('p', { dir: 'auto' }, String(findings.campaign.summary))] : []), el('p', { class: 'when' }, when), el('div', { class: 'cards' }, ...key)];
+}
+function largest(found: Row[]): string {
+    const f = [...found].sort((a, b) => (b.fraction ?? 0) - (a.fraction ?? 0))[0];
+    return `${percent(f.fraction, f.fraction_sd)} at ${metres(f.fibre_m)}`;
+}
+
+export function stream(): HTMLElement[] {
+    return list(findings.stream).map((s, n) => {
+        const go = (f: Row) => { const b = el('button', { type: 'button', 'aria-label': `Show the inflow at ${metres(f.fibre_m)}` }, metres(f.fibre_m)); b.addEventListener('click', () => moveTo({ fibre: f.fibre_m })); return b; };
+        const own = list(data.streams).find(c => c.stretch === s.stretch);
+        const found = list(s.inflows);
+        const limit = s.detection_limit_fraction == null ? 'Too little contrast between groundwater and stream: not resolvable here.' : `An inflow under about ${percent(s.detection_limit_fraction)} of the discharge could not have been seen.`;
+        return panel('h-stream' + n, `Inflows: ${isolated(s.stretch)}`, el('p', {}, (found.length ? '' : 'Nothing found. ') + limit),
+            found.length > 0 && table(['Fibre', 'Kind', 'Share \u00b1 sd', 'Inflow temperature', 'Discharge', 'Contrast', 'Score', 'Position sd'],
+                found.map(f => [go(f), String(f.kind ?? ''), percent(f.fraction, f.fraction_sd), pm(f.temperature_c, f.temperature_sd_c, 2, '\u00b0C'), f.discharge_m3s == null ? '\u2013' : pm(1000 * f.discharge_m3s, f.discharge_sd_m3s == null ? null : 1000 * f.discharge_sd_m3s, 2, 'L/s'), num(f.contrast_c, 2, '\u00b0C'), num(f.score, 1), metres(f.position_sd_m)]), 'Inflows, share of the discharge just below'),
+            own && chart({ id: 'h-anomaly' + n, title: 'Temperature against its surroundings', x: own.fibre_m, unit: '\u00b0C', link: 'fibre', lines: [{ label: 'anomaly', values: own.anomaly_c }] }),
+            own && chart({ id: 'h-limit' + n, title: 'Smallest share of discharge that would show', x: own.fibre_m, unit: '%', link: 'fibre', lines: [{ label: 'detection limit', values: list(own.detection_limit_fraction).map((v: any) => (v == null ? null : 100 * v)), dash: [6, 4], colour: '--line2' }] }),
+            list(s.not_inflows).length > 0 && el('h3', {}, 'Looked like an inflow, and is none'), list(s.not_inflows).length > 0 && texts(list(s.not_inflows).map(sentence)),
+            list(s.evidence).length > 0 && el('h3', {}, 'Evidence'), list(s.evidence).length > 0 && texts(list(s.evidence).map(sentence)),
+            list(s.cautions).length > 0 && texts(list(s.cautions).map(sentence)), s.method && el('p', { class: 'method' }, String(s.method)));
+    });
+}
+
+const seconds = (rows: Row[], key: string) => rows.map(r => Date.parse(r[key]) / 1000);
+const numbers = (rows: Row[], key: string, scale = 1) => rows.map(r => (r[key] == null ? null : r[key] * scale));
+/// Value with its band of one sd either side, over time.
+function banded(id: string, title: string, rows: Row[], time: string, key: string, sd: string, unit: string, scale = 1): HTMLElement {
+    const v = numbers(rows, key, scale), s = numbers(rows, sd, scale), side = (k: number) => v.map((x, i) => (x == null || s[i] == null ? null : x + k * s[i]!));
+    return chart({ id, title, x: seconds(rows, time), unit, time: true, band: [3, 2], lines: [{ label: 'value', values: v }, { label: '\u2212 1 sd', values: side(-1), colour: '--line3' }, { label: '+ 1 sd', values: side(1), colour: '--line3' }] });
+}
+export function others(): HTMLElement[] {
+    const out: HTMLElement[] = [];
+    list(findings.snow).forEach((s, n) => {
+        const c = list(s.channels);
+        out.push(panel('h-snow' + n, `Snow: ${isolated(s.stretch)}`, list(s.cover).length > 0 && banded('h-cover' + n, 'Covered share of the line', list(s.cover), 'date', 'covered_fraction', 'covered_fraction_sd', '%', 100),
+            c.length > 0 && chart({ id: 'h-melt' + n, title: 'Days under snow along the line', x: numbers(c, 'fibre_m') as number[], unit: 'days', link: 'fibre', lines: [{ label: 'covered days', values: numbers(c, 'covered_days') }] })));
+    });
+    list(findings.column).forEach((s, n) => {
+        const r = list(s.series);
+        out.push(panel('h-column' + n, `Water column: ${isolated(s.name)}`, r.length > 0 && banded('h-thermo' + n, 'Thermocline depth', r, 'time', 'thermocline_depth_m', 'thermocline_depth_sd_m', 'm'),
+            r.length > 0 && chart({ id: 'h-schmidt' + n, title: 'Schmidt stability', x: seconds(r, 'time'), unit: 'J/m\u00b2', time: true, link: 'time', lines: [{ label: 'stability', values: numbers(r, 'schmidt_stability_jm2') }] })));
+    });
+    list(findings.bed).forEach((s, n) => { const r = list(s.series); out.push(panel('h-bed' + n, `Streambed: ${isolated(s.name)}`, r.length > 0 && banded('h-flux' + n, 'Flux of water, positive down', r, 'time', 'flux_ms', 'flux_sd_ms', 'm/day', 86400))); });
+    return out;
+}
+
+export function trust(): HTMLElement[] {
+    const q = findings.quality ?? {}, p = findings.placement, r = findings.record ?? {}, out: HTMLElement[] = [];
+    out.push(panel('h-quality', 'Quality', facts([['Noise, middle channel', num(q.noise_c, 3, '\u00b0C')], ['Spatial response', metres(q.spatial_response_m)], ['Missing', percent(r.missing_fraction)], ['Gaps', String(list(r.gaps).length)]]),
+        list(q.baths).length > 0 && table(['Bath', 'Bias', 'RMSE'], list(q.baths).map(b => [String(b.name ?? ''), num(b.bias_c, 3, '\u00b0C'), num(b.rmse_c, 3, '\u00b0C')]), 'Baths against their references'),
+        list(findings.warnings).length > 0 && el('h3', {}, 'Warnings'), list(findings.warnings).length > 0 && texts(list(findings.warnings).map(sentence))));
+    if (p) out.push(panel('h-placement', 'Placement', facts([['System', `${p.crs_name ?? ''} (${p.crs ?? ''})`], ['To WGS 84', `${p.operation_to_wgs84 ?? ''}, accuracy ${metres(p.operation_accuracy_m)}`], ['Slack', num(p.slack, 3)], ['Residual, rms', metres(p.residual_rms_m)]]),
+        list(p.tie_points).length > 0 && table(['Tie point', 'Fibre', 'sd', 'Residual', 'Slack to the next', 'Used'], list(p.tie_points).map(t => [String(t.label ?? ''), metres(t.fibre_m), metres(t.sd_m), metres(t.residual_m), num(t.slack, 3), t.used === false ? `no: ${t.reason ?? ''}` : 'yes']), 'Tie points')));
+    if (list(findings.cautions).length) out.push(panel('h-cautions', 'Cautions', texts(list(findings.cautions).map(sentence))));
+    const v = findings.provenance ?? {};
+    out.push(panel('h-provenance', 'Provenance', facts([['Made by', `${v.program ?? 'rillstrand'} ${v.version ?? ''}, ${v.time ?? ''}`], ['Campaign file', `${v.campaign_file ?? ''} (SHA-256 ${v.campaign_sha256 ?? ''})`]]),
+        table(['Input', 'SHA-256'], list(v.inputs).map(i => [String(i.file ?? ''), String(i.sha256 ?? '')]), 'Inputs'),
+        list(v.defaults).length > 0 && table(['Default used', 'Value'], list(v.defaults).map(d => [String(d.key ?? ''), String(d.value ?? '')]), 'Defaults')));
+    return out;
+}
