@@ -102,6 +102,8 @@ Record simulate(const Stream& stream, const Cable& cable, double start_s, double
     for (std::size_t k = 0; k < stream.inflows.size(); ++k) {
         TrueInflow truth;
         truth.inflow = stream.inflows[k];
+        // what comes in anywhere in a cell is mixed into all of it: it enters at the cell's edge
+        truth.inflow.stream_m = double(cells.inflow_cell[k]) * stream.cell_m;
         truth.fibre_m = fibre_at(record, truth.inflow.stream_m);
         truth.fraction = truth.inflow.discharge_m3s / cells.below_m3s[cells.inflow_cell[k]];
         truth.series_degC.resize(traces);

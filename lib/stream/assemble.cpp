@@ -16,6 +16,8 @@ namespace rillstrand::stream {
 namespace {
 
 constexpr double nan = std::numeric_limits<double>::quiet_NaN();
+// plumes are no exact exponentials: error of their beginning over their length, chosen here
+constexpr double shape_error = 0.12;
 constexpr double power_z = 1.644854; // 95 % power, one-sided normal
 
 struct Place {
@@ -103,7 +105,8 @@ void add_step(const Context& c, const Judged& judged, bool added_to, const White
     inflow.kind = Kind::step;
     const double scale = std::sqrt(excess);
     set_place(c.frame,
-              {posterior.at_m, posterior.at_sd_m * scale, posterior.low_m, posterior.high_m},
+              {posterior.at_m, std::hypot(posterior.at_sd_m * scale, shape_error * posterior.mixing_m),
+               posterior.low_m, posterior.high_m},
               inflow);
     const double value = added_to ? judged.value : posterior.value;
     const double sd =

@@ -92,7 +92,7 @@ ColumnFit fit_columns(const Whitener& whitener, const Eigen::ArrayXd& profile,
 
 Roughness estimate_roughness(const Eigen::ArrayXd& place_m, const Eigen::ArrayXd& profile,
                              const Eigen::ArrayXd& white_variance, const Eigen::MatrixXd& columns,
-                             double stiff_m) {
+                             double stiff_m, const Roughness* start) {
     const Eigen::Index n = place_m.size();
     const double spacing = (place_m[n - 1] - place_m[0]) / double(n - 1);
     const double white = white_variance.mean();
@@ -111,8 +111,13 @@ Roughness estimate_roughness(const Eigen::ArrayXd& place_m, const Eigen::ArrayXd
                 (tail_dof + 1.0) * std::log1p(fit.residual[j] * fit.residual[j] / (tail_dof - 2.0));
         return sum;
     };
-    double nugget = -1.0, rough = 2.0, best = cost(nugget, rough);
-    for (double step = 1.6; step > 0.1; step *= 0.5) {
+    double nugget = -1.0, rough = 2.0;
+    if (start != nullptr) {
+        nugget = std::clamp(std::log10(start->nugget2 / white), -3.0, 5.0);
+        rough = std::clamp(std::log10(start->roughness2 / floor2(start->nugget2)), 0.0, 9.0);
+    }
+    double best = cost(nugget, rough);
+    for (double step = start != nullptr ? 0.8 : 1.6; step > 0.1; step *= 0.5) {
         for (int round = 0; round < 6; ++round) {
             const double before = best;
             for (const auto& [dn, dr] :

@@ -57,8 +57,9 @@ ColumnFit fit_columns(const Whitener& whitener, const Eigen::ArrayXd& profile,
 /// 6 degrees of freedom) so that what is not in the columns yet does little harm. The
 /// roughness is never so small that the background would be held stiff over more than
 /// `stiff_m`.
+/// @param start  where to begin the search, or none
 Roughness estimate_roughness(const Eigen::ArrayXd& place_m, const Eigen::ArrayXd& profile,
                              const Eigen::ArrayXd& white_variance, const Eigen::MatrixXd& columns,
-                             double stiff_m);
+                             double stiff_m, const Roughness* start = nullptr);
 
 } // namespace rillstrand::stream

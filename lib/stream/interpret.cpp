@@ -75,8 +75,7 @@ void test_clash(const Frame& frame, const Patterns& patterns, const Solution& so
                 StreamFindings& findings) {
     const Reading* free = nullptr;
     for (const Reading& r : solution.readings)
-        if (std::abs(r.weighting.total) < 1e-9 * r.weighting.weight.abs().sum() &&
-            (free == nullptr || r.usual_sd < free->usual_sd))
+        if (shuts_constants_out(r.weighting) && (free == nullptr || r.usual_sd < free->usual_sd))
             free = &r;
     if (free == nullptr || solution.pieces.empty())
         return;

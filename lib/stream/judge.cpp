@@ -48,8 +48,7 @@ Line regress(const Eigen::ArrayXd& y, const std::vector<Eigen::ArrayXd>& x) {
 const Reading* sharpest(const Solution& solution, bool constants_out, bool nights) {
     const Reading* best = nullptr;
     for (const Reading& r : solution.readings) {
-        const bool out = std::abs(r.weighting.total) < 1e-9 * r.weighting.weight.abs().sum();
-        if ((constants_out && !out) || (nights && !r.weighting.nights))
+        if ((constants_out && !shuts_constants_out(r.weighting)) || (nights && !r.weighting.nights))
             continue;
         if (best == nullptr || r.usual_sd < best->usual_sd)
             best = &r;
@@ -233,8 +232,7 @@ std::vector<Judged> judge(const Frame& frame, const Patterns& patterns, const So
     const Estimate main = estimate(frame, solution.reading, pieces);
     const Reading* no_constants = sharpest(solution, true, false);
     const Reading* nights = sharpest(solution, false, true);
-    const bool shuts = std::abs(solution.reading.weighting.total) <
-                       1e-9 * solution.reading.weighting.weight.abs().sum();
+    const bool shuts = shuts_constants_out(solution.reading.weighting);
     std::optional<Estimate> constant_free, night;
     if (no_constants != nullptr)
         constant_free = estimate(frame, *no_constants, pieces);

@@ -18,8 +18,12 @@ struct Piece {
     double to_m = 0.0; ///< box: its downstream edge
     double mixing_m =
         0.0; ///< step: a plume of this e-folding length beside it, with its own size; 0: none
+    bool far_bank = false; ///< the cable sees nothing of it at first: step and plume are one shape
+    double curve = 0.0;    ///< own size, by which the shape bends in a logarithmic profile
     bool declared = false; ///< known surface water: stays whatever its size
     double score = 0.0;    ///< |z| with which it came in
+
+    Eigen::Index width() const { return type == Type::step && mixing_m > 0.0 && !far_bank ? 2 : 1; }
 };
 
 /// A step at 0 seen through a Gaussian of standard deviation `sd_m`.

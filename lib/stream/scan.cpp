@@ -51,6 +51,12 @@ public:
         Piece piece;
     };
 
+    /// As if nothing had been accepted.
+    void reset() {
+        m_norm2 = m_full2;
+        m_box2 = m_box_full2;
+    }
+
     /// The shape that gains most.
     Best best(const Eigen::VectorXd& residual, double widest_m) {
         for (std::size_t f = 0; f < families; ++f) {
@@ -176,9 +182,8 @@ private:
 
 void take_in(const Piece& piece, const LocalFit& fit, Basis& basis, Shapes& shapes) {
     for (const Eigen::VectorXd& column : fit.columns(piece)) {
-        const Eigen::VectorXd* q = basis.add(column);
-        if (q != nullptr)
-            shapes.accept(*q);
+        if (basis.add(column))
+            shapes.accept(basis.last());
     }
 }
 
@@ -213,13 +218,13 @@ std::vector<Piece> find_pieces(const Eigen::ArrayXd& place_m, const Eigen::Array
                                std::vector<Piece> start) {
     const Whitener whitener(place_m, variance, roughness2);
     const Eigen::VectorXd white = whitener.apply(profile);
-    const Shapes all_shapes(place_m, whitener, response_sd_m, levels);
+    Shapes shapes(place_m, whitener, response_sd_m, levels);
     std::vector<Piece> best;
     double least = std::numeric_limits<double>::infinity();
     // one by one may take a wrong turn where things lie close: three ways, the best end counts
     for (const double widest_m : {levels.widest_box_m, 0.4 * levels.widest_box_m, 2.5}) {
         const LocalFit fit(place_m, whitener, response_sd_m, levels);
-        Shapes shapes = all_shapes;
+        shapes.reset();
         Basis basis(white);
         std::vector<Piece> pieces = start;
         for (const Piece& piece : pieces)

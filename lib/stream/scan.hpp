@@ -14,10 +14,11 @@ struct ScanLevels {
     double fall_gain = 20.0; ///< a step the wrong way: no groundwater does that
     double box_gain = 24.0;
     double kink_gain = 20.0;
-    double plume_gain = 14.0;
+    double plume_gain = 14.0;   ///< for a plume's size and length
+    double slow_gain = 7.0;     ///< for a length alone
     double widest_box_m = 25.0; ///< in the scan; wider ones come from a step and its undoing
     double widest_join_m = 90.0;
-    double reach_m = 160.0; ///< how far below its place a shape is looked at
+    double reach_m = 120.0; ///< how far below its place a shape is looked at
     std::size_t most_pieces = 80;
 };
 

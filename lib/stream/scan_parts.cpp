@@ -12,37 +12,53 @@ namespace {
 constexpr std::array<double, 9> mixing_lengths_m{0.0, 2.0, 3.0, 4.2, 6.0, 8.5, 12.0, 17.0, 24.0};
 }
 
-const Eigen::VectorXd* Basis::add(const Eigen::VectorXd& column) {
+bool Basis::add(const Eigen::VectorXd& column) {
     Eigen::VectorXd q = column;
     const double before = q.norm();
-    for (int twice = 0; twice < 2; ++twice)
-        for (const Eigen::VectorXd& c : m_columns)
-            q -= c.dot(q) * c;
+    if (m_count > 0)
+        for (int twice = 0; twice < 2; ++twice) {
+            const auto c = m_columns.leftCols(m_count);
+            const Eigen::VectorXd p = c.transpose() * q;
+            q.noalias() -= c * p;
+        }
     const double after = q.norm();
     if (!(after > 1e-4 * before))
-        return nullptr;
+        return false;
     q /= after;
     m_residual -= q.dot(m_residual) * q;
-    m_columns.push_back(std::move(q));
-    return &m_columns.back();
+    if (m_count == m_columns.cols())
+        m_columns.conservativeResize(q.size(), std::max<Eigen::Index>(8, 2 * m_count));
+    m_columns.col(m_count++) = q;
+    return true;
 }
 
 double Basis::part2(Eigen::Index first, const Eigen::Ref<const Eigen::VectorXd>& segment) const {
-    double sum = 0.0;
-    for (const Eigen::VectorXd& c : m_columns) {
-        const double p = c.segment(first, segment.size()).dot(segment);
-        sum += p * p;
-    }
-    return sum;
+    return parts(first, segment).squaredNorm();
 }
 
 Eigen::VectorXd Basis::parts(Eigen::Index first,
                              const Eigen::Ref<const Eigen::VectorXd>& segment) const {
-    Eigen::VectorXd p(static_cast<Eigen::Index>(m_columns.size()));
-    for (std::size_t k = 0; k < m_columns.size(); ++k)
-        p[static_cast<Eigen::Index>(k)] = m_columns[k].segment(first, segment.size()).dot(segment);
-    return p;
+    return m_columns.block(first, 0, segment.size(), m_count).transpose() * segment;
 }
+
+namespace {
+double mixing_price(const Piece& piece, const ScanLevels& levels) {
+    if (!(piece.mixing_m > 0.0))
+        return 0.0;
+    return piece.far_bank ? levels.slow_gain : levels.plume_gain;
+}
+
+/// The size by which a piece's shape bends.
+double bend_of(const Piece& piece, double value, double second) {
+    return std::clamp(piece.far_bank ? 1.0 - std::exp(-value) : second, -0.5, 0.5);
+}
+
+/// A plume is what still mixes in: the cable sees none of it at first, or up to some three
+/// times the mixed step, never the other sign.
+bool odd_plume(double ratio) {
+    return ratio < -1.3 || ratio > 4.0;
+}
+} // namespace
 
 Eigen::Index LocalFit::first_channel(double place_m) const {
     const double from = place_m - 4.0 * m_response;
@@ -107,8 +123,7 @@ double LocalFit::level(const Piece& piece, double value) const {
         return m_levels.box_gain;
     if (piece.type == Piece::Type::kink)
         return m_levels.kink_gain;
-    return (value > 0.0 ? m_levels.step_gain : m_levels.fall_gain) +
-           (piece.mixing_m > 0.0 ? m_levels.plume_gain : 0.0);
+    return (value > 0.0 ? m_levels.step_gain : m_levels.fall_gain) + mixing_price(piece, m_levels);
 }
 
 void LocalFit::slide(Piece& piece, double Piece::*edge, double step_m, const Basis& basis) const {
@@ -147,26 +162,53 @@ Piece LocalFit::improve(Piece piece, const Basis& basis) const {
     }
     Piece best = piece;
     double most = -std::numeric_limits<double>::infinity();
-    for (const double mixing : mixing_lengths_m) {
-        if (mixing > 0.0 && mixing < 2.0 * m_response)
-            continue;
-        Piece trial = piece;
-        trial.mixing_m = mixing;
-        slide(trial, &Piece::at_m, std::max(spacing, 0.4 * mixing), basis);
-        double value = 0.0, value_sd = 1.0, second = 0.0;
-        const double all = gain(trial, basis, &value, &value_sd, &second);
-        // a plume is what still mixes in: the cable sees none of it at first, or up to some
-        // three times the mixed step, never the other sign
-        const double ratio = value != 0.0 ? second / value : 0.0;
-        if (mixing > 0.0 && (ratio < -1.3 || ratio > 4.0))
-            continue;
-        const double net = all - (mixing > 0.0 ? m_levels.plume_gain : 0.0);
-        if (net > most) {
-            most = net;
-            best = trial;
+    for (const bool far_bank : {false, true})
+        for (const double mixing : mixing_lengths_m) {
+            if (mixing > 0.0 ? mixing < 2.0 * m_response : far_bank)
+                continue;
+            Piece trial = piece;
+            trial.mixing_m = mixing;
+            trial.far_bank = far_bank;
+            slide(trial, &Piece::at_m, std::max(spacing, 0.4 * mixing), basis);
+            double value = 0.0, value_sd = 1.0, second = 0.0;
+            double all = gain(trial, basis, &value, &value_sd, &second);
+            if (mixing > 0.0) {
+                trial.curve = bend_of(trial, value, second);
+                all = gain(trial, basis, &value, &value_sd, &second);
+            }
+            if (trial.width() == 2 && (value == 0.0 || odd_plume(second / value)))
+                continue;
+            const double net = all - mixing_price(trial, m_levels);
+            if (net > most) {
+                most = net;
+                best = trial;
+            }
         }
-    }
+    if (best.mixing_m > 0.0)
+        tune_plume(best, basis);
     return best;
+}
+
+/// Length, bend and place of a plume in turn.
+void LocalFit::tune_plume(Piece& piece, const Basis& basis) const {
+    for (int round = 0; round < 2; ++round) {
+        double value = 0.0, value_sd = 0.0, second = 0.0;
+        gain(piece, basis, &value, &value_sd, &second);
+        piece.curve = bend_of(piece, value, second);
+        double most = gain(piece, basis);
+        for (double factor = 1.2; factor > 1.02; factor = std::sqrt(factor))
+            for (const double f : {factor, 1.0 / factor}) {
+                Piece trial = piece;
+                trial.mixing_m =
+                    std::clamp(piece.mixing_m * f, 2.0 * m_response, mixing_lengths_m.back() * 1.2);
+                slide(trial, &Piece::at_m, 0.2, basis);
+                const double now = gain(trial, basis);
+                if (now > most + 1e-9) {
+                    most = now;
+                    piece = trial;
+                }
+            }
+    }
 }
 
 Basis LocalFit::without(const std::vector<Piece>& pieces, std::size_t left_out,
@@ -229,6 +271,36 @@ double LocalFit::cost(const std::vector<Piece>& pieces, const Eigen::VectorXd& w
     return sum;
 }
 
+/// Two steps close together are one whose mixing was not seen at first, if one does about as well.
+bool LocalFit::join_near(std::vector<Piece>& pieces, const Eigen::VectorXd& white) const {
+    std::sort(pieces.begin(), pieces.end(),
+              [](const Piece& a, const Piece& b) { return a.at_m < b.at_m; });
+    for (std::size_t a = 0; a < pieces.size(); ++a)
+        for (std::size_t b = a + 1; b < pieces.size() && pieces[b].at_m - pieces[a].at_m < 12.0;
+             ++b) {
+            if (pieces[a].type != Piece::Type::step || pieces[b].type != Piece::Type::step ||
+                pieces[b].declared)
+                continue;
+            std::vector<Piece> rest = pieces;
+            rest.erase(rest.begin() + static_cast<std::ptrdiff_t>(b));
+            rest.erase(rest.begin() + static_cast<std::ptrdiff_t>(a));
+            const Basis basis = without(rest, rest.size(), white);
+            Piece one = improve(pieces[a], basis);
+            const Piece other = improve(pieces[b], basis);
+            if (gain(other, basis) - mixing_price(other, m_levels) >
+                gain(one, basis) - mixing_price(one, m_levels))
+                one = other;
+            one.declared = pieces[a].declared;
+            std::vector<Piece> joined = rest;
+            joined.push_back(one);
+            if (cost(joined, white) < cost(pieces, white) + 8.0) {
+                pieces = std::move(joined);
+                return true;
+            }
+        }
+    return false;
+}
+
 /// The reverse: a box whose two edges differ by more than their error is two steps.
 bool LocalFit::split_box(std::vector<Piece>& pieces, const Eigen::VectorXd& white) const {
     for (std::size_t k = 0; k < pieces.size(); ++k) {
@@ -258,6 +330,8 @@ std::vector<Piece> LocalFit::settle(std::vector<Piece> pieces, const Eigen::Vect
         for (std::size_t k = 0; k < pieces.size(); ++k)
             if (pieces[k].type != Piece::Type::kink && !pieces[k].declared)
                 pieces[k] = improve(pieces[k], without(pieces, k, white));
+        while (join_near(pieces, white)) {
+        }
         while (split_box(pieces, white)) {
         }
         while (join_opposites(pieces, white)) {
@@ -301,40 +375,61 @@ StepPosterior locate_step(const Eigen::ArrayXd& place_m, const Eigen::ArrayXd& p
             for (const Eigen::VectorXd& c : fit.columns(pieces[k]))
                 basis.add(c);
     struct Node {
-        double at, mixing, gain, value, sd, plume;
+        double at, mixing, gain, value, sd, plume, cell;
     };
     std::vector<Node> nodes;
     double most = -std::numeric_limits<double>::infinity();
-    const double half = 12.0; // metres either side, chosen here
-    for (const double mixing : mixing_lengths_m) {
-        if (mixing > 0.0 && mixing < 2.0 * response_sd_m)
-            continue;
-        for (double by = -half; by <= half; by += std::abs(by) < 2.0 ? 0.1 : 0.25) {
-            Piece trial = pieces[which];
-            trial.at_m += by;
-            trial.mixing_m = mixing;
-            if (trial.at_m <= place_m[0] || trial.at_m >= place_m[place_m.size() - 1])
-                continue;
-            Node node{trial.at_m, mixing, 0.0, 0.0, 1.0, 0.0};
+    const double end = place_m[place_m.size() - 1];
+    const Piece& start = pieces[which];
+    const auto look = [&](double at, double mixing, bool far_bank, double cell) {
+        if (at <= place_m[0] || at >= end || (mixing > 0.0 && mixing < 2.0 * response_sd_m))
+            return;
+        Piece trial = start;
+        trial.at_m = at;
+        trial.mixing_m = mixing;
+        trial.far_bank = far_bank;
+        Node node{at, mixing, 0.0, 0.0, 1.0, 0.0, cell};
+        node.gain = fit.gain(trial, basis, &node.value, &node.sd, &node.plume);
+        if (mixing > 0.0 && std::abs(node.value) > 0.02) { // below that the bend is nothing
+            trial.curve = bend_of(trial, node.value, node.plume);
             node.gain = fit.gain(trial, basis, &node.value, &node.sd, &node.plume);
-            if (!(node.gain > 0.0) || !(node.value != 0.0))
-                continue;
-            node.plume /= node.value;
-            if (mixing > 0.0) {
-                if (node.plume < -1.3 || node.plume > 4.0)
-                    continue;
-                node.gain -= 6.0; // one more size, one more length: about ln n each
-            }
-            most = std::max(most, node.gain);
-            nodes.push_back(node);
         }
+        if (!(node.gain > 0.0) || node.value == 0.0)
+            return;
+        node.plume = far_bank ? -1.0 : node.plume / node.value;
+        if (trial.width() == 2 && odd_plume(node.plume))
+            return;
+        node.gain -= mixing > 0.0 ? (far_bank ? 2.0 : 6.0) : 0.0; // about ln n a number more
+        most = std::max(most, node.gain);
+        nodes.push_back(node);
+    };
+    const auto in_fine = [&](double at, double mixing, bool far_bank) {
+        const bool same_kind = (mixing > 0.0) == (start.mixing_m > 0.0) &&
+                               (mixing == 0.0 || far_bank == start.far_bank);
+        return same_kind && std::abs(at - start.at_m) < 1.25 &&
+               (mixing == 0.0 || std::abs(std::log(mixing / start.mixing_m)) < 0.26);
+    };
+    const double half = 10.0, coarse = 0.5, fine = 0.1; // metres, chosen here
+    for (const bool far_bank : {false, true})
+        for (const double mixing : mixing_lengths_m)
+            for (double by = -half; by <= half; by += coarse)
+                if ((mixing > 0.0 || !far_bank) && !in_fine(start.at_m + by, mixing, far_bank))
+                    look(start.at_m + by, mixing, far_bank, coarse * (mixing > 0.0 ? 0.35 : 1.0));
+    for (double by = -1.2; by <= 1.201; by += fine) {
+        if (!(start.mixing_m > 0.0))
+            look(start.at_m + by, 0.0, false, fine);
+        else
+            for (int k = -4; k <= 4; ++k)
+                look(start.at_m + by, start.mixing_m * std::exp(0.0578 * k), start.far_bank,
+                     fine * 0.0578);
     }
+    const double spacing = (end - place_m[0]) / double(place_m.size() - 1);
+    const auto square = [](double x) { return x * x; };
     StepPosterior out;
     double total = 0.0, square_at = 0.0, square_value = 0.0, best = -1.0;
     std::vector<std::pair<double, double>> mass;
     for (const Node& node : nodes) {
-        const double step = std::abs(node.at - pieces[which].at_m) < 2.0 ? 0.1 : 0.25;
-        const double w = step * std::exp(0.5 * (node.gain - most));
+        const double w = node.cell * std::exp(0.5 * (node.gain - most));
         total += w;
         out.at_m += w * node.at;
         square_at += w * node.at * node.at;
@@ -355,7 +450,8 @@ StepPosterior locate_step(const Eigen::ArrayXd& place_m, const Eigen::ArrayXd& p
     }
     out.at_m /= total;
     out.value /= total;
-    out.at_sd_m = std::sqrt(std::max(0.0, square_at / total - out.at_m * out.at_m) + 0.05 * 0.05);
+    out.at_sd_m = std::sqrt(std::max(0.0, square_at / total - out.at_m * out.at_m) +
+                            square(0.1 * spacing) + square(0.2 * response_sd_m));
     out.value_sd = std::sqrt(std::max(0.0, square_value / total - out.value * out.value));
     std::sort(mass.begin(), mass.end());
     double sum = 0.0;

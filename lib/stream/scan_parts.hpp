@@ -9,8 +9,10 @@ namespace rillstrand::stream {
 class Basis {
 public:
     explicit Basis(Eigen::VectorXd profile) : m_residual(std::move(profile)) {}
-    /// @return the new orthonormal column, or nullptr if it lies within those there are
-    const Eigen::VectorXd* add(const Eigen::VectorXd& column);
+    /// @return false if the column lies within those there are, and is not taken
+    bool add(const Eigen::VectorXd& column);
+    /// The orthonormal column that was taken last.
+    auto last() const { return m_columns.col(m_count - 1); }
     const Eigen::VectorXd& residual() const { return m_residual; }
     /// Squared length of a segment's part within the columns.
     double part2(Eigen::Index first, const Eigen::Ref<const Eigen::VectorXd>& segment) const;
@@ -20,7 +22,8 @@ public:
 
 private:
     Eigen::VectorXd m_residual;
-    std::vector<Eigen::VectorXd> m_columns;
+    Eigen::MatrixXd m_columns;
+    Eigen::Index m_count = 0;
 };
 
 /// Moves single pieces to where they fit best.
@@ -49,6 +52,8 @@ private:
     Basis without(const std::vector<Piece>& pieces, std::size_t left_out,
                   const Eigen::VectorXd& white) const;
     void slide(Piece& piece, double Piece::*edge, double step_m, const Basis& basis) const;
+    void tune_plume(Piece& piece, const Basis& basis) const;
+    bool join_near(std::vector<Piece>& pieces, const Eigen::VectorXd& white) const;
     bool split_box(std::vector<Piece>& pieces, const Eigen::VectorXd& white) const;
     bool join_opposites(std::vector<Piece>& pieces, const Eigen::VectorXd& white) const;
     Eigen::Index first_channel(double place_m) const;

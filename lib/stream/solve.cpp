@@ -30,15 +30,36 @@ bool same(const std::vector<Piece>& a, const std::vector<Piece>& b) {
     });
 }
 
+/// The sharpest readings, and those that judge: without constants, of nights.
+void keep_useful(std::vector<Reading>& sorted) {
+    const std::size_t most = 4;
+    std::vector<Reading> kept;
+    bool no_constants = false, nights = false;
+    for (Reading& r : sorted) {
+        const bool out = shuts_constants_out(r.weighting);
+        if (kept.size() < most || (out && !no_constants) || (r.weighting.nights && !nights)) {
+            no_constants = no_constants || out;
+            nights = nights || r.weighting.nights;
+            kept.push_back(std::move(r));
+        }
+    }
+    sorted = std::move(kept);
+}
+
 } // namespace
 
-Reading read(const Frame& frame, const Weighting& weighting, const std::vector<Piece>& pieces) {
+bool shuts_constants_out(const Weighting& weighting) {
+    return std::abs(weighting.total) < 1e-9 * weighting.weight.abs().sum();
+}
+
+Reading read(const Frame& frame, const Weighting& weighting, const std::vector<Piece>& pieces,
+             const Roughness* start) {
     Reading reading;
     reading.weighting = weighting;
     reading.profile = make_profile(frame, weighting);
     const Eigen::MatrixXd columns = make_columns(pieces, frame.place_m, frame.response_sd_m);
     reading.rough = estimate_roughness(frame.place_m, reading.profile.value,
-                                       reading.profile.white_variance, columns, stiff_m);
+                                       reading.profile.white_variance, columns, stiff_m, start);
     reading.usual_sd = usual_step_sd(frame, reading);
     return reading;
 }
@@ -51,32 +72,37 @@ Solution solve(const Frame& frame, const std::vector<Weighting>& weightings,
     const auto error = [&](const Reading& r) {
         return std::hypot(r.usual_sd, 0.05 * r.weighting.total * inflow_sd_K);
     };
-    const auto best = [&](const std::vector<Piece>& given) {
-        solution.readings.clear();
-        for (const Weighting& w : weightings)
-            solution.readings.push_back(read(frame, w, given));
-        return *std::min_element(
-            solution.readings.begin(), solution.readings.end(),
-            [&](const Reading& a, const Reading& b) { return error(a) < error(b); });
-    };
-    solution.reading = best(pieces);
+    const auto less = [&](const Reading& a, const Reading& b) { return error(a) < error(b); };
+    for (const Weighting& w : weightings)
+        solution.readings.push_back(read(frame, w, pieces));
+    std::sort(solution.readings.begin(), solution.readings.end(), less);
+    keep_useful(solution.readings);
+    solution.reading = solution.readings.front();
     for (int round = 0; round < 4; ++round) {
         std::vector<Piece> now = find_pieces(
             frame.place_m, solution.reading.profile.value, solution.reading.variance(),
             solution.reading.rough.roughness2, frame.response_sd_m, solution.levels, declared);
         const bool done = round > 0 && same(now, pieces);
         pieces = std::move(now);
-        // the pieces belong to the weighting in which they were found: it changes only for the
+        // the pieces belong to the weighting in which they were found: it changes only in the
         // first rounds, while they are few
-        Reading next = best(pieces);
-        if (next.weighting.name != solution.reading.weighting.name && round < 2)
-            solution.reading = std::move(next);
-        else {
-            solution.reading = read(frame, solution.reading.weighting, pieces);
-            if (done)
+        if (round < 2) {
+            for (Reading& r : solution.readings)
+                r = read(frame, r.weighting, pieces, &r.rough);
+            const Reading& next =
+                *std::min_element(solution.readings.begin(), solution.readings.end(), less);
+            const bool stays = next.weighting.name == solution.reading.weighting.name;
+            solution.reading = next;
+            if (stays && done)
                 break;
+            continue;
         }
+        solution.reading = read(frame, solution.reading.weighting, pieces, &solution.reading.rough);
+        if (done)
+            break;
     }
+    for (Reading& r : solution.readings)
+        r = read(frame, r.weighting, pieces, &r.rough);
     solution.pieces = std::move(pieces);
     return solution;
 }

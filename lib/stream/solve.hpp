@@ -32,8 +32,13 @@ struct Solution {
 /// Background held stiff over no more than this (the window of one side has twice the length).
 inline constexpr double stiff_m = 30.0;
 
+/// Does an offset of the fibre that is constant in time vanish in this weighting?
+bool shuts_constants_out(const Weighting& weighting);
+
 /// Reads one weighting given pieces.
-Reading read(const Frame& frame, const Weighting& weighting, const std::vector<Piece>& pieces);
+/// @param start  where the search for the background begins, or none
+Reading read(const Frame& frame, const Weighting& weighting, const std::vector<Piece>& pieces,
+             const Roughness* start = nullptr);
 
 /// Finds the pieces of a reach: tries all weightings, takes the one in which a step would
 /// have the least standard deviation, finds pieces in it, measures the background anew
