@@ -95,6 +95,41 @@ double share_sd_by_source(const Context& c, double at_m, double share) {
     return std::abs(share * w.total * c.inflow_sd_K / c.solution.reading.profile.contrast[j]);
 }
 
+std::string artefact_name(Verdict verdict) {
+    switch (verdict) {
+    case Verdict::loss:
+        return "step loss";
+    case Verdict::sun:
+        return "sun or shade";
+    case Verdict::dry:
+        return "dry cable";
+    case Verdict::damped:
+        return "buried cable";
+    case Verdict::unexplained:
+        return "unexplained step";
+    default:
+        return "local";
+    }
+}
+
+void add_artefact(const Context& c, const Judged& judged, StreamFindings& findings) {
+    const Piece& piece = c.solution.pieces[judged.piece];
+    Artefact artefact;
+    artefact.kind = artefact_name(judged.verdict);
+    const double a = c.frame.fibre_at(piece.at_m);
+    const double b = piece.type == Piece::Type::box ? c.frame.fibre_at(piece.to_m) : a;
+    artefact.from_m = std::min(a, b);
+    artefact.to_m = std::max(a, b);
+    artefact.size_c = judged.mean_step_K;
+    if (piece.type == Piece::Type::step)
+        artefact.size_c = (beside(c.frame, piece.at_m, 3.0 * c.frame.response_sd_m, 8.0) -
+                           beside(c.frame, piece.at_m, 3.0 * c.frame.response_sd_m, -8.0))
+                              .mean();
+    for (const std::string& why : judged.why)
+        artefact.text += (artefact.text.empty() ? "" : " ") + why;
+    findings.artefacts.push_back(std::move(artefact));
+}
+
 void add_step(const Context& c, const Judged& judged, bool added_to, const Whitener& whitener,
               double excess, StreamFindings& findings, std::vector<Gain>& gains) {
     const Piece& piece = c.solution.pieces[judged.piece];
@@ -130,6 +165,13 @@ void add_step(const Context& c, const Judged& judged, bool added_to, const White
             "Inflow at " + text::fixed(inflow.fibre_m, 1) +
             " m: the contrast changes too little to tell it from a constant "
             "loss of the fibre.");
+    if (!(inflow.score >= findings.threshold_z)) {
+        Judged doubtful = judged;
+        doubtful.verdict = Verdict::local;
+        doubtful.why.push_back("With its place and mixing left open the step is not larger than its error.");
+        add_artefact(c, doubtful, findings);
+        return;
+    }
     gains.push_back({posterior.at_m, posterior.at_m, value, sd});
     findings.inflows.push_back(std::move(inflow));
 }
@@ -148,41 +190,6 @@ void add_spot(const Context& c, const Judged& judged, StreamFindings& findings) 
     inflow.anomaly_c = judged.mean_step_K;
     inflow.evidence = judged.why;
     findings.inflows.push_back(std::move(inflow));
-}
-
-std::string artefact_name(Verdict verdict) {
-    switch (verdict) {
-    case Verdict::loss:
-        return "step loss";
-    case Verdict::sun:
-        return "sun or shade";
-    case Verdict::dry:
-        return "dry cable";
-    case Verdict::damped:
-        return "buried cable";
-    case Verdict::unexplained:
-        return "unexplained step";
-    default:
-        return "local";
-    }
-}
-
-void add_artefact(const Context& c, const Judged& judged, StreamFindings& findings) {
-    const Piece& piece = c.solution.pieces[judged.piece];
-    Artefact artefact;
-    artefact.kind = artefact_name(judged.verdict);
-    const double a = c.frame.fibre_at(piece.at_m);
-    const double b = piece.type == Piece::Type::box ? c.frame.fibre_at(piece.to_m) : a;
-    artefact.from_m = std::min(a, b);
-    artefact.to_m = std::max(a, b);
-    artefact.size_c = judged.mean_step_K;
-    if (piece.type == Piece::Type::step)
-        artefact.size_c = (beside(c.frame, piece.at_m, 3.0 * c.frame.response_sd_m, 8.0) -
-                           beside(c.frame, piece.at_m, 3.0 * c.frame.response_sd_m, -8.0))
-                              .mean();
-    for (const std::string& why : judged.why)
-        artefact.text += (artefact.text.empty() ? "" : " ") + why;
-    findings.artefacts.push_back(std::move(artefact));
 }
 
 /// Artefacts that touch are one.

@@ -56,9 +56,14 @@ const Reading* sharpest(const Solution& solution, bool constants_out, bool night
     return best;
 }
 
-/// Does a step vanish when something is shut out?
+/// Does a step vanish when something is shut out? The two ways, that it is not there and that it is
+/// all there, are weighed by their likelihood; four to one for its being there beforehand (chosen
+/// here: inflows are what the cable was laid for).
 bool vanishes(double value, double sd, double other, double other_sd) {
-    return other < 0.4 * value && value - other > 3.0 * std::hypot(other_sd, 0.3 * sd);
+    const double error2 = other_sd * other_sd + 0.1 * sd * sd;
+    const double gone = other * other / error2;
+    const double there = (value - other) * (value - other) / error2;
+    return there - gone > 2.0 * std::log(4.0);
 }
 
 void judge_step(Judged& judged, const Estimate* no_constants, const Estimate* nights,
@@ -224,6 +229,48 @@ Estimate estimate(const Frame& frame, const Reading& reading, const std::vector<
     return out;
 }
 
+namespace {
+
+/// A step that is undone again nearby is none of the stream's, and what lies at the edge of such
+/// a piece and is much smaller belongs to it.
+void judge_neighbours(std::vector<Judged>& list, const std::vector<Piece>& pieces) {
+    const double near_m = 90.0, edge_m = 5.0; // chosen here
+    for (Judged& up : list)
+        for (Judged& down : list) {
+            if (up.verdict != Verdict::inflow || down.verdict != Verdict::unexplained)
+                continue;
+            const double apart = std::abs(pieces[up.piece].at_m - pieces[down.piece].at_m);
+            const double ratio = -down.value / up.value;
+            if (apart > near_m || ratio < 0.6 || ratio > 1.6)
+                continue;
+            up.verdict = down.verdict = Verdict::local;
+            for (Judged* j : {&up, &down})
+                j->why.push_back("It is undone again " + text::fixed(apart, 0) +
+                                 " m away: the stream does not stay changed.");
+        }
+    for (Judged& small : list) {
+        if (small.verdict != Verdict::inflow)
+            continue;
+        const double at = pieces[small.piece].at_m;
+        for (const Judged& large : list) {
+            const Piece& piece = pieces[large.piece];
+            const bool artefact = large.verdict != Verdict::inflow &&
+                                  large.verdict != Verdict::declared &&
+                                  large.verdict != Verdict::spot;
+            const bool edge = std::abs(piece.at_m - at) < edge_m ||
+                              (piece.type == Piece::Type::box && at > piece.at_m - edge_m &&
+                               at < piece.to_m + edge_m);
+            if (artefact && edge && small.value < 0.4 * std::abs(large.value)) {
+                small.verdict = Verdict::local;
+                small.why.push_back("It lies at the edge of a larger disturbance of the cable.");
+                break;
+            }
+        }
+    }
+}
+
+} // namespace
+
 std::vector<Judged> judge(const Frame& frame, const Patterns& patterns, const Solution& solution,
                           const std::optional<Eigen::ArrayXd>& inflow_degC) {
     const std::vector<Piece>& pieces = solution.pieces;
@@ -257,6 +304,7 @@ std::vector<Judged> judge(const Frame& frame, const Patterns& patterns, const So
         }
         out.push_back(std::move(judged));
     }
+    judge_neighbours(out, pieces);
     return out;
 }
 

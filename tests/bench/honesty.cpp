@@ -74,6 +74,16 @@ int main(int argc, char** argv) {
             const auto findings = rillstrand::stream::interpret(campaign.input);
             tally.seconds +=
                 std::chrono::duration<double>(std::chrono::steady_clock::now() - start).count();
+            if (talk) {
+                for (const auto& p : campaign.cable.patches)
+                    std::printf("   patch %d %.1f-%.1f strength %.2f\n", static_cast<int>(p.kind),
+                                rillstrand::physics::fibre_at(campaign.truth, p.from_m),
+                                rillstrand::physics::fibre_at(campaign.truth, p.to_m), p.strength);
+                for (const auto& l : campaign.cable.losses)
+                    std::printf("   loss %.1f %.2f\n", rillstrand::physics::fibre_at(campaign.truth, l.first), l.second);
+                for (const auto& a : findings.artefacts)
+                    std::printf("   artefact %s %.1f-%.1f %.3f K\n", a.kind.c_str(), a.from_m, a.to_m, a.size_c);
+            }
             rillstrand::stream::scenarios::score(campaign, findings, tally, talk);
         }
         print(name, tally);

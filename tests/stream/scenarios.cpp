@@ -178,9 +178,10 @@ Campaign make(Sort sort, unsigned seed, bool with_inflows) {
         s.discharge_m3s * (1.0 + 0.03 * std::normal_distribution<double>()(random));
     in.config.discharge_sd_m3s = 0.03 * s.discharge_m3s;
     if (sort != Sort::hard) {
+        const double error_K = sort == Sort::plain ? 0.0 : 0.1; // the bound takes it as it is
         in.config.inflow_temperature_c =
-            groundwater + 0.1 * std::normal_distribution<double>()(random);
-        in.config.inflow_temperature_sd_c = 0.1;
+            groundwater + error_K * std::normal_distribution<double>()(random);
+        in.config.inflow_temperature_sd_c = error_K;
     }
     for (const physics::TrueInflow& t : c.truth.inflows)
         if (t.inflow.surface_water)
