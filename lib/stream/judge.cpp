@@ -14,6 +14,7 @@ namespace rillstrand::stream {
 namespace {
 
 constexpr double nan = std::numeric_limits<double>::quiet_NaN();
+constexpr double drift_K = 0.1;         // slow wandering that no bath is asked about, chosen here
 constexpr double widest_spot_m = 15.0; // chosen here: a seep at the cable, not a stretch of bed
 
 std::string percent(double share) {
@@ -260,7 +261,9 @@ void judge_neighbours(std::vector<Judged>& list, const std::vector<Piece>& piece
             const bool edge = std::abs(piece.at_m - at) < edge_m ||
                               (piece.type == Piece::Type::box && at > piece.at_m - edge_m &&
                                at < piece.to_m + edge_m);
-            if (artefact && edge && small.value < 0.4 * std::abs(large.value)) {
+            const bool beside_loss = piece.type == Piece::Type::step && small.constant_untold;
+            if (artefact && edge &&
+                (beside_loss || small.value < 0.4 * std::abs(large.value))) {
                 small.verdict = Verdict::local;
                 small.why.push_back("It lies at the edge of a larger disturbance of the cable.");
                 break;
@@ -281,8 +284,16 @@ std::vector<Judged> judge(const Frame& frame, const Patterns& patterns, const So
     const Reading* nights = sharpest(solution, false, true);
     const bool shuts = shuts_constants_out(solution.reading.weighting);
     std::optional<Estimate> constant_free, night;
-    if (no_constants != nullptr)
+    if (no_constants != nullptr) {
         constant_free = estimate(frame, *no_constants, pieces);
+        // wandering of the instrument passes for a swing of the water and damps every share
+        const double drift = drift_K / no_constants->weighting.swing_K;
+        constant_free->sd = (constant_free->sd.array().square() +
+                             (main.value.array() * std::min(1.0, drift * drift)).square())
+                                .sqrt();
+        if (no_constants->weighting.swing_K < 3.0 * drift_K)
+            constant_free->sd.array() += main.value.array().abs();
+    }
     if (nights != nullptr && !solution.reading.weighting.nights)
         night = estimate(frame, *nights, pieces);
     std::vector<Judged> out;

@@ -49,7 +49,7 @@ void keep_useful(std::vector<Reading>& sorted) {
 } // namespace
 
 bool shuts_constants_out(const Weighting& weighting) {
-    return std::abs(weighting.total) < 1e-9 * weighting.weight.abs().sum();
+    return std::abs(weighting.total) < 1e-5 * weighting.weight.abs().sum();
 }
 
 Reading read(const Frame& frame, const Weighting& weighting, const std::vector<Piece>& pieces,

@@ -125,6 +125,7 @@ Weighting shut_out(const std::string& name, const Eigen::ArrayXd& series,
         return w;
     w.weight = left.array() / power;
     w.total = w.weight.sum();
+    w.swing_K = std::sqrt(left.squaredNorm() / std::max(1.0, double(use.count())));
     return w;
 }
 

@@ -49,6 +49,7 @@ void print(const std::string& name, const Tally& t) {
 
 /// honesty [seeds] [sort or `all`] [talk]
 int main(int argc, char** argv) {
+    const int first = argc > 4 ? std::atoi(argv[4]) : 1;
     const int seeds = argc > 1 ? std::atoi(argv[1]) : 20;
     const std::string only = argc > 2 ? argv[2] : "all";
     const bool talk = argc > 3;
@@ -65,7 +66,7 @@ int main(int argc, char** argv) {
         if (only != "all" && only != name)
             continue;
         Tally tally;
-        for (int seed = 1; seed <= seeds; ++seed) {
+        for (int seed = first; seed <= seeds; ++seed) {
             const auto campaign =
                 rillstrand::stream::scenarios::make(sort, static_cast<unsigned>(seed));
             if (talk)

@@ -329,7 +329,7 @@ void score(const Campaign& c, const StreamFindings& f, Tally& tally, bool talk) 
         ++tally.places;
         tally.place_errors.push_back(std::abs(in.fibre_m - t.fibre_m));
         tally.places_in += std::abs(in.fibre_m - t.fibre_m) <= 2.0 * in.fibre_sd_m ? 1 : 0;
-        if (std::isfinite(in.temperature_c)) {
+        if (in.temperature_sd_c > 0.0) {
             ++tally.sources;
             tally.source_errors.push_back(std::abs(in.temperature_c - t.temperature_degC));
             tally.sources_in +=
@@ -358,7 +358,7 @@ void score(const Campaign& c, const StreamFindings& f, Tally& tally, bool talk) 
                             to_string(f.inflows[i].kind).c_str(), f.inflows[i].fibre_from_m,
                             f.inflows[i].fibre_to_m, f.inflows[i].fraction,
                             f.inflows[i].fraction_sd, f.inflows[i].score,
-                            f.inflows[i].evidence.empty() ? "" : f.inflows[i].evidence.back().c_str());
+                            f.inflows[i].evidence.empty() ? "" : (f.inflows[i].evidence[1] + f.inflows[i].evidence.back()).c_str());
         }
     tally.false_inflows += false_ones;
     tally.campaigns_with_false += false_ones > 0 ? 1 : 0;
