@@ -140,7 +140,8 @@ void add_step(const Context& c, const Judged& judged, bool added_to, const White
     inflow.kind = Kind::step;
     const double scale = std::sqrt(excess);
     set_place(c.frame,
-              {posterior.at_m, std::hypot(posterior.at_sd_m * scale, shape_error * posterior.mixing_m),
+              {posterior.at_m,
+               std::hypot(posterior.at_sd_m * scale, shape_error * posterior.mixing_m),
                posterior.low_m, posterior.high_m},
               inflow);
     const double value = added_to ? judged.value : posterior.value;
@@ -150,7 +151,7 @@ void add_step(const Context& c, const Judged& judged, bool added_to, const White
     const double own_sd = std::exp(-value) * sd;
     inflow.fraction_sd = std::hypot(own_sd, share_sd_by_source(c, piece.at_m, inflow.fraction));
     inflow.mixing_length_m = posterior.mixing_m;
-    inflow.score = std::abs(value) / sd;
+    inflow.score = std::max(piece.score, std::abs(value) / sd);
     set_temperature(c, piece.at_m, inflow);
     inflow.evidence = judged.why;
     inflow.evidence.insert(
@@ -165,10 +166,12 @@ void add_step(const Context& c, const Judged& judged, bool added_to, const White
             "Inflow at " + text::fixed(inflow.fibre_m, 1) +
             " m: the contrast changes too little to tell it from a constant "
             "loss of the fibre.");
-    if (!(inflow.score >= findings.threshold_z)) {
+    const double sure = 2.0; // standard deviations, place and mixing left open
+    if (!(inflow.score >= findings.threshold_z) || !(value > sure * sd)) {
         Judged doubtful = judged;
         doubtful.verdict = Verdict::local;
-        doubtful.why.push_back("With its place and mixing left open the step is not larger than its error.");
+        doubtful.why.push_back(
+            "With its place and mixing left open the step is not larger than its error.");
         add_artefact(c, doubtful, findings);
         return;
     }

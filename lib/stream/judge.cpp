@@ -14,7 +14,7 @@ namespace rillstrand::stream {
 namespace {
 
 constexpr double nan = std::numeric_limits<double>::quiet_NaN();
-constexpr double drift_K = 0.1;         // slow wandering that no bath is asked about, chosen here
+constexpr double drift_K = 0.1;        // slow wandering that no bath is asked about, chosen here
 constexpr double widest_spot_m = 15.0; // chosen here: a seep at the cable, not a stretch of bed
 
 std::string percent(double share) {
@@ -262,8 +262,7 @@ void judge_neighbours(std::vector<Judged>& list, const std::vector<Piece>& piece
                               (piece.type == Piece::Type::box && at > piece.at_m - edge_m &&
                                at < piece.to_m + edge_m);
             const bool beside_loss = piece.type == Piece::Type::step && small.constant_untold;
-            if (artefact && edge &&
-                (beside_loss || small.value < 0.4 * std::abs(large.value))) {
+            if (artefact && edge && (beside_loss || small.value < 0.4 * std::abs(large.value))) {
                 small.verdict = Verdict::local;
                 small.why.push_back("It lies at the edge of a larger disturbance of the cable.");
                 break;
@@ -310,8 +309,13 @@ std::vector<Judged> judge(const Frame& frame, const Patterns& patterns, const So
         } else if (pieces[k].type == Piece::Type::box) {
             judge_box(judged, frame, patterns, pieces[k], inflow_degC);
         } else {
-            judge_step(judged, constant_free ? &*constant_free : nullptr, night ? &*night : nullptr,
-                       shuts);
+            // ice holds the stream at one temperature: its swings tell nothing there
+            const Eigen::ArrayXd water =
+                beside(frame, pieces[k].at_m, 3.0 * frame.response_sd_m, -8.0);
+            const bool ice = (water < 0.3).count() * 5 > water.size();
+            judge_step(judged, constant_free && !ice ? &*constant_free : nullptr,
+                       night ? &*night : nullptr, shuts);
+            judged.constant_untold = judged.constant_untold || (ice && !shuts);
         }
         out.push_back(std::move(judged));
     }

@@ -35,7 +35,8 @@ struct Weighting {
     double inflow = 0.0;   ///< Ain: sum of weight times inflow temperature
     double total = 0.0;    ///< sum of weights: how Ain moves with a constant in Tin
     bool nights = false;
-    double swing_K = 0.0;  ///< rms of what is left of the series: drift of the instrument counts against it
+    double swing_K =
+        0.0; ///< rms of what is left of the series: drift of the instrument counts against it
 };
 
 /// All weightings worth trying for water of that temperature.

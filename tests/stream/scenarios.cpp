@@ -48,7 +48,8 @@ void add_inflows(physics::Stream& stream, Random& random, double low, double hig
 void add_patches(physics::Cable& cable, Random& random, double length_m) {
     const double part = length_m / 5.0;
     int k = 0;
-    for (const auto kind : {Patch::Kind::sunlit, Patch::Kind::dry, Patch::Kind::buried, Patch::Kind::pool}) {
+    for (const auto kind :
+         {Patch::Kind::sunlit, Patch::Kind::dry, Patch::Kind::buried, Patch::Kind::pool}) {
         Patch patch;
         patch.kind = kind;
         patch.from_m = (0.3 + k++) * part + draw(random, 0.0, 0.5 * part);
@@ -211,8 +212,8 @@ double bound(const Campaign& c, const physics::TrueInflow& t) {
         } else {
             above = j;
         }
-        const double sd = c.cable.noise_K *
-                          (1.0 + c.cable.noise_growth_per_km * c.truth.fibre_m[j] / 1000.0);
+        const double sd =
+            c.cable.noise_K * (1.0 + c.cable.noise_growth_per_km * c.truth.fibre_m[j] / 1000.0);
         noise2 += sd * sd;
         n += 1.0;
     }
@@ -235,7 +236,8 @@ double bound(const Campaign& c, const physics::TrueInflow& t) {
 
 namespace {
 
-void score_gains(const Campaign& c, const StreamFindings& f, Tally& tally, std::vector<bool>& used) {
+void score_gains(const Campaign& c, const StreamFindings& f, Tally& tally,
+                 std::vector<bool>& used) {
     for (const physics::TrueGain& gain : c.truth.gains) {
         ++tally.gains;
         for (std::size_t i = 0; i < f.inflows.size(); ++i) {
@@ -254,7 +256,8 @@ void score_gains(const Campaign& c, const StreamFindings& f, Tally& tally, std::
     }
 }
 
-void score_spots(const Campaign& c, const StreamFindings& f, Tally& tally, std::vector<bool>& used) {
+void score_spots(const Campaign& c, const StreamFindings& f, Tally& tally,
+                 std::vector<bool>& used) {
     for (const Patch& patch : c.cable.patches) {
         if (patch.kind != Patch::Kind::spot)
             continue;
@@ -270,12 +273,14 @@ void score_spots(const Campaign& c, const StreamFindings& f, Tally& tally, std::
 }
 
 /// Nearest finding of an inflow; its index, or the number of findings.
-std::size_t partner(const StreamFindings& f, double fibre_m, const std::vector<bool>& used, bool known) {
+std::size_t partner(const StreamFindings& f, double fibre_m, const std::vector<bool>& used,
+                    bool known) {
     std::size_t best = f.inflows.size();
     double nearest = 12.0; // metres
     for (std::size_t i = 0; i < f.inflows.size(); ++i) {
         const double far = std::abs(f.inflows[i].fibre_m - fibre_m);
-        if (!used[i] && f.inflows[i].kind == Kind::step && f.inflows[i].known == known && far < nearest) {
+        if (!used[i] && f.inflows[i].kind == Kind::step && f.inflows[i].known == known &&
+            far < nearest) {
             nearest = far;
             best = i;
         }
@@ -297,7 +302,10 @@ void score(const Campaign& c, const StreamFindings& f, Tally& tally, bool talk) 
             ++tally.tributaries;
             if (found) {
                 used[i] = true;
-                tally.tributaries_in += std::abs(f.inflows[i].fraction - t.fraction) <= 2.0 * f.inflows[i].fraction_sd ? 1 : 0;
+                tally.tributaries_in +=
+                    std::abs(f.inflows[i].fraction - t.fraction) <= 2.0 * f.inflows[i].fraction_sd
+                        ? 1
+                        : 0;
             }
             continue;
         }
@@ -314,8 +322,8 @@ void score(const Campaign& c, const StreamFindings& f, Tally& tally, bool talk) 
             const double limit = f.channels.detection_limit_fraction[j];
             tally.missed_over_limit += t.fraction > limit ? 1 : 0;
             if (talk)
-                std::printf("   missed %.1f m share %.4f limit %.4f mixing %.1f bank %.1f\n", t.fibre_m,
-                            t.fraction, limit, t.inflow.mixing_m, t.inflow.bank);
+                std::printf("   missed %.1f m share %.4f limit %.4f mixing %.1f bank %.1f\n",
+                            t.fibre_m, t.fraction, limit, t.inflow.mixing_m, t.inflow.bank);
             continue;
         }
         used[i] = true;
@@ -333,17 +341,19 @@ void score(const Campaign& c, const StreamFindings& f, Tally& tally, bool talk) 
             ++tally.sources;
             tally.source_errors.push_back(std::abs(in.temperature_c - t.temperature_degC));
             tally.sources_in +=
-                std::abs(in.temperature_c - t.temperature_degC) <= 2.0 * in.temperature_sd_c ? 1 : 0;
+                std::abs(in.temperature_c - t.temperature_degC) <= 2.0 * in.temperature_sd_c ? 1
+                                                                                             : 0;
         }
         if (std::isfinite(in.discharge_m3s)) {
             ++tally.flows;
-            tally.flows_in += std::abs(in.discharge_m3s - t.inflow.discharge_m3s) <=
-                                      2.0 * in.discharge_sd_m3s
-                                  ? 1
-                                  : 0;
+            tally.flows_in +=
+                std::abs(in.discharge_m3s - t.inflow.discharge_m3s) <= 2.0 * in.discharge_sd_m3s
+                    ? 1
+                    : 0;
         }
         if (talk && std::abs(in.fraction - t.fraction) > 2.0 * in.fraction_sd)
-            std::printf("   off %.1f m share %.4f +- %.4f true %.4f (%.1f sd) place %.2f +- %.2f of %.2f mixing %.1f bank %.1f\n",
+            std::printf("   off %.1f m share %.4f +- %.4f true %.4f (%.1f sd) place %.2f +- %.2f "
+                        "of %.2f mixing %.1f bank %.1f\n",
                         in.fibre_m, in.fraction, in.fraction_sd, t.fraction,
                         (in.fraction - t.fraction) / in.fraction_sd, in.fibre_m, in.fibre_sd_m,
                         t.fibre_m, t.inflow.mixing_m, t.inflow.bank);
@@ -354,11 +364,14 @@ void score(const Campaign& c, const StreamFindings& f, Tally& tally, bool talk) 
         if (!used[i]) {
             ++false_ones;
             if (talk)
-                std::printf("   false %s at %.1f-%.1f share %.4f +- %.4f z %.1f: %s\n",
-                            to_string(f.inflows[i].kind).c_str(), f.inflows[i].fibre_from_m,
-                            f.inflows[i].fibre_to_m, f.inflows[i].fraction,
-                            f.inflows[i].fraction_sd, f.inflows[i].score,
-                            f.inflows[i].evidence.empty() ? "" : (f.inflows[i].evidence[1] + f.inflows[i].evidence.back()).c_str());
+                std::printf(
+                    "   false %s at %.1f-%.1f share %.4f +- %.4f z %.1f: %s\n",
+                    to_string(f.inflows[i].kind).c_str(), f.inflows[i].fibre_from_m,
+                    f.inflows[i].fibre_to_m, f.inflows[i].fraction, f.inflows[i].fraction_sd,
+                    f.inflows[i].score,
+                    f.inflows[i].evidence.empty()
+                        ? ""
+                        : (f.inflows[i].evidence[1] + f.inflows[i].evidence.back()).c_str());
         }
     tally.false_inflows += false_ones;
     tally.campaigns_with_false += false_ones > 0 ? 1 : 0;
