@@ -175,7 +175,8 @@ void add_step(const Context& c, const Judged& judged, bool added_to, const White
         add_artefact(c, doubtful, findings);
         return;
     }
-    gains.push_back({posterior.at_m, posterior.at_m, value, sd});
+    gains.push_back(
+        {posterior.at_m, posterior.at_m, value, inflow.fraction_sd / (1.0 - inflow.fraction)});
     findings.inflows.push_back(std::move(inflow));
 }
 

@@ -106,6 +106,15 @@ void judge_step(Judged& judged, const Estimate* no_constants, const Estimate* ni
                                  " +- " + percent(sd) + "): sun or shade.");
             return;
         }
+        // where the changes alone tell an inflow, disagreement means another inflow temperature
+        const bool told = no_constants != nullptr && !judged.constant_untold;
+        if (!told && std::abs(other - judged.value) > 4.0 * std::hypot(sd, judged.sd) &&
+            std::abs(other - judged.value) > 0.6 * judged.value) {
+            judged.verdict = Verdict::unexplained;
+            judged.why.push_back("Day and night disagree (" + percent(1.0 - std::exp(-other)) +
+                                 " +- " + percent(sd) + " at night): no mixing of two waters.");
+            return;
+        }
         if (other > 2.0 * sd)
             judged.why.push_back("It is there at night too: " + percent(1.0 - std::exp(-other)) +
                                  " +- " + percent(sd) + ".");

@@ -66,13 +66,14 @@ int main(int argc, char** argv) {
                                      {"hard", Sort::hard},
                                      {"many", Sort::many},
                                      {"winter", Sort::winter},
-                                     {"small", Sort::small}}) {
+                                     {"small", Sort::small},
+                                     {"small, nothing", Sort::small}}) {
         if (only != "all" && only != name)
             continue;
         Tally tally;
         for (int seed = first; seed <= seeds; ++seed) {
-            const auto campaign =
-                rillstrand::stream::scenarios::make(sort, static_cast<unsigned>(seed));
+            const auto campaign = rillstrand::stream::scenarios::make(
+                sort, static_cast<unsigned>(seed), std::string(name) != "small, nothing");
             if (talk)
                 std::printf("%s %d\n", name, seed);
             const auto start = std::chrono::steady_clock::now();

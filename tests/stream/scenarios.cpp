@@ -159,6 +159,7 @@ Campaign make(Sort sort, unsigned seed, bool with_inflows) {
     case Sort::small:
         days = 2.0;
         k.interval_s = 1800.0;
+        k.sampling_m = 1.0;
         if (with_inflows) {
             add_inflows(s, random, 0.015, 0.12, 90.0, 160.0, groundwater);
         } else {

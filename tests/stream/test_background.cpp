@@ -6,6 +6,7 @@
 #include <catch2/catch.hpp>
 
 #include <Eigen/Cholesky>
+#include <Eigen/LU>
 
 #include <cmath>
 #include <random>
