@@ -81,7 +81,8 @@ TheilSen theil_sen(const Eigen::ArrayXd& x, const Eigen::ArrayXd& y, double leve
     std::vector<double> slopes;
     for (Eigen::Index i = 0; i < x.size(); ++i)
         for (Eigen::Index j = 0; j < i; ++j)
-            if (x(i) != x(j)) slopes.push_back((y(i) - y(j)) / (x(i) - x(j)));
+            if (x(i) != x(j))
+                slopes.push_back((y(i) - y(j)) / (x(i) - x(j)));
     std::sort(slopes.begin(), slopes.end());
     TheilSen result;
     result.slope = median(slopes);
@@ -94,7 +95,8 @@ TheilSen theil_sen(const Eigen::ArrayXd& x, const Eigen::ArrayXd& y, double leve
     const auto low = static_cast<std::ptrdiff_t>(std::round(0.5 * (count - spread)));
     const auto high = static_cast<std::ptrdiff_t>(std::round(0.5 * (count + spread)));
     const auto last = static_cast<std::ptrdiff_t>(slopes.size()) - 1;
-    result.slope_low = slopes[static_cast<std::size_t>(std::clamp<std::ptrdiff_t>(low - 1, 0, last))];
+    result.slope_low =
+        slopes[static_cast<std::size_t>(std::clamp<std::ptrdiff_t>(low - 1, 0, last))];
     result.slope_high = slopes[static_cast<std::size_t>(std::clamp<std::ptrdiff_t>(high, 0, last))];
     return result;
 }
@@ -116,7 +118,8 @@ YorkLine york(const Eigen::ArrayXd& x, const Eigen::ArrayXd& weight_x, const Eig
         const double next = (w * beta * v).sum() / (w * beta * u).sum();
         const bool settled = std::abs(next - b) <= 1e-15 * (1.0 + std::abs(next));
         b = next;
-        if (settled) break;
+        if (settled)
+            break;
     }
     const Eigen::ArrayXd adjusted = mx + beta;
     const double adjusted_mean = (w * adjusted).sum() / w.sum();

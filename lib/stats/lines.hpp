@@ -3,8 +3,8 @@
 
 #include <Eigen/Core>
 
-/// Straight lines y = intercept + slope x. All arrays of one fit have the same size, at least 3, and
-/// hold no NaN.
+/// Straight lines y = intercept + slope x. All arrays of one fit have the same size, at least 3,
+/// and hold no NaN.
 namespace rillstrand::stats {
 
 struct Line {
@@ -38,9 +38,9 @@ TheilSen theil_sen(const Eigen::ArrayXd& x, const Eigen::ArrayXd& y, double leve
 
 /// Line with errors in both axes, each point with its own.
 struct YorkLine {
-    Line line; ///< sds at the adjusted points
-    double covariance = 0.0; ///< of intercept and slope
-    double chi_square = 0.0; ///< sum of the weighted squared residuals
+    Line line;                ///< sds at the adjusted points
+    double covariance = 0.0;  ///< of intercept and slope
+    double chi_square = 0.0;  ///< sum of the weighted squared residuals
     double probability = 0.0; ///< of a larger chi_square, n - 2 degrees of freedom
     int iterations = 0;
 };

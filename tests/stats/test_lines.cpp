@@ -14,8 +14,8 @@ Eigen::ArrayXd array(std::initializer_list<double> values) {
     return result;
 }
 
-// Points of Pearson (1901), Phil. Mag. 2, 559-572, with the weights of York (1966), Can. J. Phys. 44,
-// 1079-1086.
+// Points of Pearson (1901), Phil. Mag. 2, 559-572, with the weights of York (1966), Can. J. Phys.
+// 44, 1079-1086.
 const Eigen::ArrayXd x = array({0.0, 0.9, 1.8, 2.6, 3.3, 4.4, 5.2, 6.1, 6.5, 7.4});
 const Eigen::ArrayXd y = array({5.9, 5.4, 4.4, 4.6, 3.5, 3.7, 2.8, 2.8, 2.4, 1.5});
 const Eigen::ArrayXd wx = array({1000, 1000, 500, 800, 200, 80, 60, 20, 1.8, 1});
@@ -25,7 +25,8 @@ const Eigen::ArrayXd wy = array({1, 1.8, 4, 8, 20, 20, 70, 70, 100, 500});
 
 // York et al. (2004), Am. J. Phys. 72, 367-375, Table II; Cantrell (2008), Atmos. Chem. Phys. 8,
 // 5477-5487, Table 2. S-01 to S-08.
-TEST_CASE("York's line through Pearson's points matches the published values", "[stats][published]") {
+TEST_CASE("York's line through Pearson's points matches the published values",
+          "[stats][published]") {
     const auto fit = stats::york(x, wx, y, wy);
     const double printed = 1e-10;
     CHECK_THAT(fit.line.intercept, WithinAbs(5.47991022403, printed));

@@ -47,7 +47,8 @@ TEST_CASE("the smoother agrees with the joint Gaussian solved at once", "[stats]
     const double start = one.dot(inverse * rest) / one.dot(inverse * one);
     for (Eigen::Index q = 0; q < 3; ++q) {
         Eigen::VectorXd c(n);
-        for (Eigen::Index i = 0; i < n; ++i) c(i) = covariance(query(q), data.at(i), size);
+        for (Eigen::Index i = 0; i < n; ++i)
+            c(i) = covariance(query(q), data.at(i), size);
         const double mean =
             start + prior.rate_mean * query(q) + c.dot(inverse * (rest - start * one));
         const double left = 1.0 - c.dot(inverse * one);
