@@ -12,6 +12,7 @@ function panel(id: string, title: string, ...kids: (Node | null | false | undefi
     return el('section', { 'aria-labelledby': id, class: 'wide' }, el('h2', { id }, title), ...(kids.filter(Boolean) as Node[]));
 }
 const facts = (pairs: [string, string][]) => el('dl', {}, ...pairs.flatMap(([k, v]) => [el('dt', {}, k), el('dd', {}, v)]));
+const folded = (title: string, ...kids: (Node | string)[]) => el('details', {}, el('summary', {}, title), ...kids);
 const texts = (items: string[]) => el('ul', {}, ...items.map(t => el('li', {}, t)));
 const sentence = (w: any) => (typeof w === 'string' ? w : String(w?.text ?? ''));
 
@@ -21,7 +22,7 @@ export function header(): HTMLElement[] {
     for (const s of list(findings.stream)) {
         const found = list(s.inflows);
         const limit = s.detection_limit_fraction == null ? 'not resolvable here: too little contrast' : `smallest share that would show: ${percent(s.detection_limit_fraction)}`;
-        card(found.length ? `${found.length} inflow${found.length > 1 ? 's' : ''}` : 'Nothing found', `${isolated(s.stretch)} \u00b7 ${found.length ? 'largest ' + largest(found) + ' \u00b7 ' : ''}${limit}`);
+        card(found.length ? counted(found) : 'Nothing found', `${isolated(s.stretch)} \u00b7 ${found.some(f => f.fraction != null) ? 'largest ' + largest(found) + ' \u00b7 ' : ''}${limit}`);
     }
     for (const s of list(findings.snow)) card('Snow', `${isolated(s.stretch)} \u00b7 ${list(s.channels).length} channels, ${list(s.cover).length} days`);
     for (const s of list(findings.column)) card('Water column', isolated(s.name));
@@ -31,6 +32,14 @@ export function header(): HTMLElement[] {
     const when = r.first ? `${String(r.first).slice(0, 16).replace('T', ' ')} to ${String(r.last).slice(0, 16).replace('T', ' ')} UTC \u00b7 ${r.traces} traces \u00d7 ${r.channels} channels` : '';
     return [el('p', { class: 'over' }, 'Fibre temperatures: what was found, where, how sure'), el('h1', { dir: 'auto' }, String(findings.campaign?.name || 'Campaign')),
         ...(findings.campaign?.summary ? [el('p', { dir: 'auto' }, String(findings.campaign.summary))] : []), el('p', { class: 'when' }, when), el('div', { class: 'cards' }, ...key)];
+}
+/// What came in, by kind: only water that nobody declared counts as an inflow found.
+function counted(found: Row[]): string {
+    const own = found.filter(f => !f.known);
+    const part = (kind: string, one: string, many: string) => { const n = own.filter(f => f.kind === kind).length; return n ? [`${n} ${n > 1 ? many : one}`] : []; };
+    const words = [...part('step', 'inflow', 'inflows'), ...part('diffuse', 'gaining stretch', 'gaining stretches'), ...part('spot', 'spot', 'spots')];
+    const known = found.length - own.length;
+    return [...words, ...(known ? [`${known} known water${known > 1 ? 's' : ''}`] : [])].join(', ');
 }
 function largest(found: Row[]): string {
     const f = [...found].sort((a, b) => (b.fraction ?? 0) - (a.fraction ?? 0))[0];
@@ -45,7 +54,8 @@ export function stream(): HTMLElement[] {
         const limit = s.detection_limit_fraction == null ? 'Too little contrast between groundwater and stream: not resolvable here.' : `An inflow under about ${percent(s.detection_limit_fraction)} of the discharge could not have been seen.`;
         return panel('h-stream' + n, `Inflows: ${isolated(s.stretch)}`, el('p', {}, (found.length ? '' : 'Nothing found. ') + limit),
             found.length > 0 && table(['Fibre', 'Kind', 'Share \u00b1 sd', 'Inflow temperature', 'Discharge', 'Contrast', 'Score', 'Position sd'],
-                found.map(f => [go(f), String(f.kind ?? ''), percent(f.fraction, f.fraction_sd), pm(f.temperature_c, f.temperature_sd_c, 2, '\u00b0C'), f.discharge_m3s == null ? '\u2013' : pm(1000 * f.discharge_m3s, f.discharge_sd_m3s == null ? null : 1000 * f.discharge_sd_m3s, 2, 'L/s'), num(f.contrast_c, 2, '\u00b0C'), num(f.score, 1), metres(f.position_sd_m)]), 'Inflows, share of the discharge just below'),
+                found.map(f => [go(f), f.known ? `${f.kind}: ${isolated(f.label)}` : String(f.kind ?? ''), f.fraction == null ? (f.kind === 'spot' ? 'not measurable' : 'not resolvable') : percent(f.fraction, f.fraction_sd), pm(f.temperature_c, f.temperature_sd_c, 2, '\u00b0C'), f.discharge_m3s == null ? '\u2013' : pm(1000 * f.discharge_m3s, f.discharge_sd_m3s == null ? null : 1000 * f.discharge_sd_m3s, 2, 'L/s'), num(f.contrast_c, 2, '\u00b0C'), num(f.score, 1), metres(f.position_sd_m)]), 'Inflows, share of the discharge just below'),
+            found.some(f => f.evidence) && folded('Evidence for each', ...found.filter(f => f.evidence).map(f => el('p', {}, `${metres(f.fibre_m)}, ${f.kind}: ${f.evidence}`))),
             own && chart({ id: 'h-anomaly' + n, title: 'Temperature against its surroundings', x: own.fibre_m, unit: '\u00b0C', link: 'fibre', lines: [{ label: 'anomaly', values: own.anomaly_c }] }),
             own && chart({ id: 'h-limit' + n, title: 'Smallest share of discharge that would show', x: own.fibre_m, unit: '%', link: 'fibre', lines: [{ label: 'detection limit', values: list(own.detection_limit_fraction).map((v: any) => (v == null ? null : 100 * v)), dash: [6, 4], colour: '--line2' }] }),
             list(s.not_inflows).length > 0 && el('h3', {}, 'Looked like an inflow, and is none'), list(s.not_inflows).length > 0 && texts(list(s.not_inflows).map(sentence)),
@@ -80,14 +90,14 @@ export function others(): HTMLElement[] {
 export function trust(): HTMLElement[] {
     const q = findings.quality ?? {}, p = findings.placement, r = findings.record ?? {}, out: HTMLElement[] = [];
     out.push(panel('h-quality', 'Quality', facts([['Noise, middle channel', num(q.noise_c, 3, '\u00b0C')], ['Spatial response', metres(q.spatial_response_m)], ['Missing', percent(r.missing_fraction)], ['Gaps', String(list(r.gaps).length)]]),
-        list(q.baths).length > 0 && table(['Bath', 'Bias', 'RMSE'], list(q.baths).map(b => [String(b.name ?? ''), num(b.bias_c, 3, '\u00b0C'), num(b.rmse_c, 3, '\u00b0C')]), 'Baths against their references'),
+        list(q.baths).length > 0 ? table(['Bath', 'Use', 'Bias', 'RMSE', 'Drift', 'Gradient inside'], list(q.baths).map(b => [String(b.name ?? ''), String(b.use ?? ''), pm(b.bias_c, b.bias_sd_c, 3, 'K'), num(b.rmse_c, 3, 'K'), pm(b.drift_kd, b.drift_sd_kd, 3, 'K/d'), num(b.gradient_km, 4, 'K/m')]), 'Baths against their references') : el('p', {}, 'No reference bath is declared: nothing says how far off the temperatures are.'),
         list(findings.warnings).length > 0 && el('h3', {}, 'Warnings'), list(findings.warnings).length > 0 && texts(list(findings.warnings).map(sentence))));
     if (p) out.push(panel('h-placement', 'Placement', facts([['System', `${p.crs_name ?? ''} (${p.crs ?? ''})`], ['To WGS 84', `${p.operation_to_wgs84 ?? ''}, accuracy ${metres(p.operation_accuracy_m)}`], ['Slack', num(p.slack, 3)], ['Residual, rms', metres(p.residual_rms_m)]]),
         list(p.tie_points).length > 0 && table(['Tie point', 'Fibre', 'sd', 'Residual', 'Slack to the next', 'Used'], list(p.tie_points).map(t => [String(t.label ?? ''), metres(t.fibre_m), metres(t.sd_m), metres(t.residual_m), num(t.slack, 3), t.used === false ? `no: ${t.reason ?? ''}` : 'yes']), 'Tie points')));
     if (list(findings.cautions).length) out.push(panel('h-cautions', 'Cautions', texts(list(findings.cautions).map(sentence))));
     const v = findings.provenance ?? {};
     out.push(panel('h-provenance', 'Provenance', facts([['Made by', `${v.program ?? 'rillstrand'} ${v.version ?? ''}, ${v.time ?? ''}`], ['Campaign file', `${v.campaign_file ?? ''} (SHA-256 ${v.campaign_sha256 ?? ''})`]]),
-        table(['Input', 'SHA-256'], list(v.inputs).map(i => [String(i.file ?? ''), String(i.sha256 ?? '')]), 'Inputs'),
-        list(v.defaults).length > 0 && table(['Default used', 'Value'], list(v.defaults).map(d => [String(d.key ?? ''), String(d.value ?? '')]), 'Defaults')));
+        list(v.inputs).length > 0 && folded(`${list(v.inputs).length} inputs and their SHA-256`, table(['Input', 'SHA-256'], list(v.inputs).slice(0, 500).map(i => [String(i.file ?? ''), String(i.sha256 ?? '')]), list(v.inputs).length > 500 ? 'The first 500 inputs; all stand in findings.json' : 'Inputs')),
+        list(v.defaults).length > 0 && folded(`${list(v.defaults).length} defaults that were used`, table(['Default used', 'Value'], list(v.defaults).map(d => [String(d.key ?? ''), String(d.value ?? '')]), 'Defaults'))));
     return out;
 }
