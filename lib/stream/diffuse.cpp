@@ -19,7 +19,20 @@ struct Slopes {
     double usual = 0.0, sd = 0.0; ///< median and scaled median absolute deviation
 };
 
-Slopes slopes_of(const Frame& frame, const Weighting& weighting, const std::vector<Piece>& pieces) {
+/// Does a window hold something that is no water coming in?
+bool disturbed(const Context& context, double from_m, double to_m) {
+    return std::any_of(context.judged.begin(), context.judged.end(), [&](const Judged& j) {
+        const Piece& piece = context.solution.pieces[j.piece];
+        const bool water = j.verdict == Verdict::inflow || j.verdict == Verdict::spot ||
+                           j.verdict == Verdict::declared;
+        const double end = piece.type == Piece::Type::box ? piece.to_m : piece.at_m;
+        return !water && end > from_m - 3.0 && piece.at_m < to_m + 3.0;
+    });
+}
+
+Slopes slopes_of(const Context& context, const Weighting& weighting) {
+    const Frame& frame = context.frame;
+    const std::vector<Piece>& pieces = context.solution.pieces;
     const Reading reading = read(frame, weighting, pieces);
     const Eigen::MatrixXd columns = make_columns(pieces, frame.place_m, frame.response_sd_m);
     Eigen::ArrayXd y = reading.profile.value;
@@ -30,6 +43,8 @@ Slopes slopes_of(const Frame& frame, const Weighting& weighting, const std::vect
     Slopes out;
     const double end = frame.place_m[frame.n_place() - 1];
     for (double from = 0.0; from + window_m <= end; from += stride_m) {
+        if (disturbed(context, from, from + window_m))
+            continue;
         double n = 0.0, sx = 0.0, sy = 0.0, sxx = 0.0, sxy = 0.0;
         for (Eigen::Index j = 0; j < frame.n_place(); ++j) {
             const double x = frame.place_m[j] - from - 0.5 * window_m;
@@ -98,9 +113,8 @@ std::vector<DiffuseGain> find_diffuse(const Context& context) {
         return out;
     calm.inflow = (calm.weight * inflow).sum();
     nights.inflow = (nights.weight * inflow).sum();
-    const std::vector<Piece>& pieces = context.solution.pieces;
-    const Slopes a = slopes_of(frame, calm, pieces);
-    const Slopes b = slopes_of(frame, nights, pieces);
+    const Slopes a = slopes_of(context, calm);
+    const Slopes b = slopes_of(context, nights);
     if (a.per_m.size() != b.per_m.size() || a.per_m.size() < 8)
         return out;
     const double stands_out = 2.0; // of each window, in each weighting; the whole must pass more
@@ -125,7 +139,7 @@ std::vector<DiffuseGain> find_diffuse(const Context& context) {
         const bool agree = std::abs(by_calm.value - by_night.value) <
                            2.5 * gap_sd + 0.3 * std::max(by_calm.value, by_night.value);
         const double z = std::min(by_calm.value / by_calm.sd, by_night.value / by_night.sd);
-        if (!agree || z < 3.5)
+        if (!agree || z < 4.0)
             continue;
         const double wa = 1.0 / (by_calm.sd * by_calm.sd), wb = 1.0 / (by_night.sd * by_night.sd);
         gain.value = (wa * by_calm.value + wb * by_night.value) / (wa + wb);

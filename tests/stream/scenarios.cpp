@@ -365,12 +365,12 @@ void score(const Campaign& c, const StreamFindings& f, Tally& tally, bool talk) 
         if (!used[i]) {
             ++false_ones;
             if (talk)
-                std::printf(
-                    "   false %s at %.1f-%.1f share %.4f +- %.4f z %.1f: %s\n",
-                    to_string(f.inflows[i].kind).c_str(), f.inflows[i].fibre_from_m,
-                    f.inflows[i].fibre_to_m, f.inflows[i].fraction, f.inflows[i].fraction_sd,
-                    f.inflows[i].score,
-                    f.inflows[i].evidence.empty() ? "" : f.inflows[i].evidence.back().c_str());
+                std::printf("   false %s at %.1f-%.1f share %.4f +- %.4f z %.1f: %s\n",
+                            to_string(f.inflows[i].kind).c_str(), f.inflows[i].fibre_from_m,
+                            f.inflows[i].fibre_to_m, f.inflows[i].fraction,
+                            f.inflows[i].fraction_sd, f.inflows[i].score,
+                            f.inflows[i].evidence.empty() ? ""
+                                                          : f.inflows[i].evidence.back().c_str());
         }
     tally.false_inflows += false_ones;
     tally.campaigns_with_false += false_ones > 0 ? 1 : 0;
