@@ -107,7 +107,10 @@ std::vector<DiffuseGain> find_diffuse(const Context& context) {
     const Eigen::Array<bool, Eigen::Dynamic, 1> all = source.isFinite();
     const Eigen::ArrayXd inflow = all.select(source, 0.0);
     const Eigen::ArrayXd contrast = inflow - frame.mean_degC;
-    Weighting calm = shut_out("heating", contrast, {p.gradient, p.sun}, all);
+    std::vector<Eigen::ArrayXd> heating{p.gradient, p.sun};
+    if (shuts_constants_out(context.solution.reading.weighting)) // losses are not among the pieces
+        heating.push_back(Eigen::ArrayXd::Ones(frame.n_time()));
+    Weighting calm = shut_out("heating", contrast, heating, all);
     Weighting nights = shut_out("day", contrast, {}, all && p.night);
     if (calm.weight.size() == 0 || nights.weight.size() == 0)
         return out;

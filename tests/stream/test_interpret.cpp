@@ -79,6 +79,9 @@ TEST_CASE("the inflow temperature is told from the record where it is not given"
     StreamInput in = cascade(0.03, 0.0, 7);
     in.config.inflow_temperature_c.reset();
     const StreamFindings f = interpret(in);
+    for (const Inflow& i : f.inflows)
+        UNSCOPED_INFO(to_string(i.kind) << " at " << i.fibre_from_m << "-" << i.fibre_to_m
+                                        << " share " << i.fraction << " z " << i.score);
     check_cascade(f);
     CHECK(std::abs(f.inflow_temperature_c - 9.0) < 4.0 * f.inflow_temperature_sd_c);
     CHECK(f.inflow_temperature_sd_c < 0.3);
@@ -90,6 +93,9 @@ TEST_CASE("an inflow temperature that does not fit the record is reported", "[st
     in.config.inflow_temperature_c = 12.0;
     in.config.inflow_temperature_sd_c = 0.1;
     const StreamFindings f = interpret(in);
+    for (const Inflow& i : f.inflows)
+        UNSCOPED_INFO(to_string(i.kind) << " at " << i.fibre_from_m << "-" << i.fibre_to_m
+                                        << " share " << i.fraction << " z " << i.score);
     bool said = false;
     for (const std::string& caution : f.cautions)
         said = said || caution.find("does not fit the record") != std::string::npos;
@@ -120,6 +126,9 @@ TEST_CASE("a loss that is constant in time is no inflow", "[stream]") {
             in.temperature_degC(i, j) =
                 head[i] + (in.fibre_m[j] > 250.0 ? -0.2 : 0.0) + 0.03 * normal(random);
     const StreamFindings f = interpret(in);
+    for (const Inflow& i : f.inflows)
+        UNSCOPED_INFO(to_string(i.kind) << " at " << i.fibre_from_m << "-" << i.fibre_to_m
+                                        << " share " << i.fraction << " z " << i.score);
     CHECK(f.inflows.empty());
     for (const Artefact& artefact : f.artefacts) { // unseen where constants are shut out anyway
         CHECK(artefact.kind == "step loss");
@@ -133,6 +142,9 @@ TEST_CASE("two arms too alike give no share", "[stream]") {
     const Eigen::ArrayXd head = in.temperature_degC.leftCols(150).rowwise().mean();
     in.known.push_back({"mill outlet", 200.0, Series{in.time_s, head}});
     const StreamFindings f = interpret(in);
+    for (const Inflow& i : f.inflows)
+        UNSCOPED_INFO(to_string(i.kind) << " at " << i.fibre_from_m << "-" << i.fibre_to_m
+                                        << " share " << i.fraction << " z " << i.score);
     bool seen = false;
     for (const Inflow& i : f.inflows)
         if (i.known) {
@@ -151,6 +163,9 @@ TEST_CASE("no contrast gives no number", "[stream]") {
         in.time_s.size(), in.fibre_m.size(),
         [&](Eigen::Index, Eigen::Index) { return 9.0 + 0.03 * normal(random); });
     const StreamFindings f = interpret(in);
+    for (const Inflow& i : f.inflows)
+        UNSCOPED_INFO(to_string(i.kind) << " at " << i.fibre_from_m << "-" << i.fibre_to_m
+                                        << " share " << i.fraction << " z " << i.score);
     CHECK(f.inflows.empty());
     CHECK_FALSE(f.detection_limit_median < 0.02);
 }
