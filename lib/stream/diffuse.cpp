@@ -101,7 +101,7 @@ std::vector<DiffuseGain> find_diffuse(const Context& context) {
     const Frame& frame = context.frame;
     const double reach_m = frame.place_m[frame.n_place() - 1];
     const Patterns& p = context.patterns;
-    if (!context.inflow_degC || reach_m < 5.0 * window_m || p.night.count() < 12 || p.night.all())
+    if (!context.inflow_degC || reach_m < 10.0 * window_m || p.night.count() < 12 || p.night.all())
         return out;
     const Eigen::ArrayXd& source = *context.inflow_degC;
     const Eigen::Array<bool, Eigen::Dynamic, 1> all = source.isFinite();
