@@ -25,6 +25,15 @@ void refuse_unbuilt(const campaign::Campaign& campaign, Problems& problems) {
         refuse(campaign.adjust->where, "[adjust]");
 }
 
+/// Keys that need another one to have an effect.
+void check_needs(const campaign::Campaign& campaign, Problems& problems) {
+    if (campaign.placement) return;
+    if (campaign.layers.corridor_m)
+        problems.add("layers.corridor_m needs [placement]: without positions there is no corridor");
+    if (campaign.page_background)
+        problems.add("page.background needs [placement]: without positions there is no map");
+}
+
 void check_places(const campaign::Campaign& campaign, const record::Inspection& heads,
                   Problems& problems) {
     if (heads.distance_m.size() == 0)
@@ -53,6 +62,7 @@ campaign::Campaign checked_campaign(const std::filesystem::path& file) {
     campaign::Campaign campaign = campaign::read_campaign(file);
     Problems problems;
     refuse_unbuilt(campaign, problems);
+    check_needs(campaign, problems);
     try {
         check_places(campaign, store::inspect(campaign), problems);
     } catch (const DataError& error) {

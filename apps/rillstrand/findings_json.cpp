@@ -70,9 +70,17 @@ Json quality_json(const Session& session, const Tables& tables) {
     std::map<std::string, int> flags;
     for (const auto& flag : session.names.flag)
         ++flags[flag];
+    Json legs = nullptr;
+    if (session.legs)
+        legs = {{"places", session.legs->places},
+                {"difference_c", number_json(session.legs->difference_K)},
+                {"rmse_c", number_json(session.legs->rmse_K)},
+                {"parts_most_fibre_m", number_json(session.legs->largest_fibre_m)},
+                {"parts_most_c", number_json(session.legs->largest_K)}};
     return {{"noise_c", number_json(median_of(session.scan->noise_K))},
             {"spatial_response_m", session.spatial_response_m},
             {"flags", flags},
+            {"legs", legs},
             {"baths", baths == nullptr ? Json::array() : rows_json(*baths)}};
 }
 

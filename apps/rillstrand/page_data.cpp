@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "page_data.hpp"
 
+#include "background.hpp"
 #include "page.hpp"
 
 #include "base/text.hpp"
@@ -53,6 +54,27 @@ Json channels_json(const Session& session) {
                            {"detection_limit_fraction", series(c.detection_limit_fraction, 5)}});
     }
     return {{"channels", channels}, {"streams", streams}};
+}
+
+/// The campaign's own picture under the map, cut to the cable and its surroundings.
+Json background_json(const Session& session) {
+    const geo::ChannelPositions& c = session.placement->channels;
+    double west = 180.0, east = -180.0, south = 90.0, north = -90.0;
+    for (Eigen::Index j = 0; j < c.lon.size(); ++j) {
+        if (!std::isfinite(c.lon(j))) continue;
+        west = std::min(west, c.lon(j));
+        east = std::max(east, c.lon(j));
+        south = std::min(south, c.lat(j));
+        north = std::max(north, c.lat(j));
+    }
+    const double margin = 0.25 * std::max({east - west, north - south, 1e-3});
+    const geo::Background picture =
+        geo::warp_background(*session.campaign.page_background,
+                             {west - margin, south - margin, east + margin, north + margin});
+    std::string bytes;
+    for (const std::byte b : picture.webp) bytes += static_cast<char>(b);
+    return {{"webp", page::base64(bytes)}, {"west", picture.west},   {"south", picture.south},
+            {"east", picture.east},        {"north", picture.north}};
 }
 
 /// The record as a picture: means over cells of time and distance, 16 bits each.
@@ -141,6 +163,8 @@ std::string page_of(const Session& session, const Tables& tables, const Json& fi
     Json data = channels_json(session);
     data["findings"] = findings;
     data["picture"] = PictureBuilder{*session.source}.build();
+    if (session.campaign.page_background && session.placement)
+        data["background"] = background_json(session);
     if (const Table* inflows = tables.find("inflows"))
         data["inflows"] = rows_json(*inflows);
     if (const Table* ties = tables.find("tie_points"))

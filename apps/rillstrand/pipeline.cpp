@@ -283,7 +283,11 @@ void place_stage(Session& session, const Context& context) {
         geo::place(session.campaign, session.axes().distance_m, session.source.get());
     for (const auto& warning : session.placement->warnings)
         session.warnings.push_back(warning);
-    const auto& reasons = session.placement->channels.reason;
+    const geo::ChannelPositions& c = session.placement->channels;
+    if (session.campaign.placement->turnaround_m)
+        session.legs = quality::compare_legs(session.axes().distance_m, c.ground_m,
+                                             session.scan->mean_degC, c.leg);
+    const auto& reasons = c.reason;
     for (std::size_t j = 0; j < reasons.size(); ++j)
         if (reasons[j] != geo::NoPosition::placed && session.names.flag[j] == "ok")
             session.names.flag[j] = "no_position";

@@ -6,6 +6,7 @@
 #include "base/error.hpp"
 #include "campaign/campaign.hpp"
 #include "quality/baths.hpp"
+#include "quality/legs.hpp"
 #include "record/gather.hpp"
 #include "record/scan.hpp"
 #include "record/source.hpp"
@@ -35,6 +36,7 @@ struct Session {
     std::optional<record::ScanSummary> scan;
     std::vector<quality::BathResult> baths;
     std::optional<geo::Placement> placement;
+    std::optional<quality::LegComparison> legs; ///< with a turnaround
     ChannelNames names;
     std::vector<stream::StreamFindings> streams;
     Warnings warnings;

@@ -23,6 +23,8 @@ export function map(): HTMLElement | null {
         const north = new L.Control({ position: 'topright' });
         north.onAdd = () => el('div', { class: 'north', role: 'img', 'aria-label': 'North is up' }, '\u2191 N');
         north.addTo(m);
+        const b = data.background;
+        if (b) L.imageOverlay('data:image/webp;base64,' + b.webp, [[(b.south - lat0) * my, (b.west - lon0) * mx], [(b.north - lat0) * my, (b.east - lon0) * mx]], { alt: 'Background picture' }).addTo(m);
         const dots = placed.map(k => L.circleMarker(at(k), { radius: 4, weight: 0, fillOpacity: 1 }).on('mouseover click', () => moveTo({ fibre: c.fibre_m[k] })).addTo(m));
         const colour = () => {
             const [, , values, unit] = attributes.find(a => a[0] === choice.value) ?? attributes[0], [low, high] = span(values!);
