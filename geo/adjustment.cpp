@@ -8,6 +8,7 @@
 #include <cmath>
 #include <limits>
 #include <numeric>
+#include <utility>
 
 namespace rillstrand::geo {
 
@@ -126,7 +127,7 @@ double match(const Polyline& route, std::vector<Tie>& ties, double max_slack) {
 
 Polyline match_to_route(const Polyline& route, std::vector<Tie>& ties, double max_slack) {
     std::vector<Tie> other_way = ties;
-    const Polyline turned = route.reversed();
+    Polyline turned = route.reversed();
     const double forward = match(route, ties, max_slack);
     const double backward = match(turned, other_way, max_slack);
     if (forward <= backward)
@@ -135,9 +136,8 @@ Polyline match_to_route(const Polyline& route, std::vector<Tie>& ties, double ma
     return turned;
 }
 
-Adjustment::Adjustment(std::vector<Tie>& ties, const std::optional<Polyline>& route,
-                       double max_slack)
-    : m_ties{ties}, m_route{route}, m_max_slack{max_slack} {
+Adjustment::Adjustment(std::vector<Tie>& ties, std::optional<Polyline> route)
+    : m_ties{ties}, m_route{std::move(route)} {
     if (m_route)
         set_aside_far_from_route();
     set_aside_blunders();

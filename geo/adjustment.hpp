@@ -41,20 +41,18 @@ class Adjustment {
 public:
     /// @param ties   by path; `used` and `reason` are written
     /// @param route  absent: straight or curved between the ties as they say
-    Adjustment(std::vector<Tie>& ties, const std::optional<Polyline>& route, double max_slack);
+    Adjustment(std::vector<Tie>& ties, std::optional<Polyline> route);
     /// @param path_m  increasing
     PlacedPath place(const Eigen::ArrayXd& path_m) const;
     const Warnings& warnings() const { return m_warnings; }
 
 private:
-    struct Model;
     void set_aside_far_from_route();
     void set_aside_blunders();
     void note_residuals();
     std::vector<std::size_t> used() const;
     std::vector<Tie>& m_ties;
     std::optional<Polyline> m_route;
-    double m_max_slack;
     double m_across_variance = 0.0;
     Warnings m_warnings;
 };

@@ -49,7 +49,7 @@ public:
         find_systems();
         make_plane();
         make_ties();
-        const Adjustment adjustment{m_ties, m_route, m_settings.max_slack};
+        const Adjustment adjustment{m_ties, m_route};
         append(adjustment.warnings());
         place_channels(adjustment);
         refuse_pieces();

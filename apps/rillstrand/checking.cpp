@@ -27,7 +27,8 @@ void refuse_unbuilt(const campaign::Campaign& campaign, Problems& problems) {
 
 /// Keys that need another one to have an effect.
 void check_needs(const campaign::Campaign& campaign, Problems& problems) {
-    if (campaign.placement) return;
+    if (campaign.placement)
+        return;
     if (campaign.layers.corridor_m)
         problems.add("layers.corridor_m needs [placement]: without positions there is no corridor");
     if (campaign.page_background)

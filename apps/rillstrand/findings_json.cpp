@@ -105,10 +105,6 @@ Json placement_json(const Session& session, const Tables& tables) {
             {"tie_points", rows_json(*tables.find("tie_points"))}};
 }
 
-Json texts_json(const std::vector<std::string>& texts) {
-    return Json(texts);
-}
-
 Json stream_json(const Session& session, const Tables& tables) {
     Json list = Json::array();
     if (session.streams.empty())
@@ -153,8 +149,8 @@ Json stream_json(const Session& session, const Tables& tables) {
                         {"not_inflows", artefacts},
                         {"refuges", refuges},
                         {"closures", closures},
-                        {"evidence", texts_json(reach.evidence)},
-                        {"cautions", texts_json(reach.cautions)},
+                        {"evidence", reach.evidence},
+                        {"cautions", reach.cautions},
                         {"method", reach.method}});
     }
     return list;

@@ -9,6 +9,7 @@
 #include <algorithm>
 #include <cmath>
 #include <limits>
+#include <set>
 
 namespace rillstrand::app {
 
@@ -237,6 +238,26 @@ Table inflows_table(const Session& session, const Positions& positions) {
     return table;
 }
 
+/// A column for each threshold that any stream's regime asks for; NaN for streams that do not.
+void add_hours_above(Table& table, const Session& session) {
+    std::set<double> thresholds;
+    for (const auto& config : session.campaign.streams)
+        thresholds.insert(config.regime.hours_above_c.begin(), config.regime.hours_above_c.end());
+    for (const double threshold : thresholds) {
+        Reals hours;
+        for (std::size_t r = 0; r < session.streams.size(); ++r) {
+            const auto& own = session.campaign.streams[r].regime.hours_above_c;
+            const auto& channels = session.streams[r].channels;
+            const auto found = std::find(own.begin(), own.end(), threshold);
+            const auto which = static_cast<std::size_t>(found - own.begin());
+            for (Eigen::Index j = 0; j < channels.fibre_m.size(); ++j)
+                hours.push_back(found == own.end() ? nan : channels.hours_above[which](j));
+        }
+        table.add_real("hours_above_" + text::slug(text::number(threshold)) + "_c",
+                       "hours above " + text::number(threshold) + " degC", "h", hours, 2);
+    }
+}
+
 Table stream_channels_table(const Session& session, const Positions& positions) {
     Table table{"stream_channels", "Channels of the streams: background, anomaly, detection limit"};
     std::vector<std::string> stretch;
@@ -265,30 +286,7 @@ Table stream_channels_table(const Session& session, const Positions& positions) 
     table.add_real("sevendadm_c", "greatest seven-day mean of daily maxima", "degC", sevendadm, 3);
     table.add_real("discharge_m3s", "discharge of the stream", "m3 s-1", q, 6);
     table.add_real("discharge_sd_m3s", "its standard deviation", "m3 s-1", q_sd, 6);
-    // Hours above a threshold: the same thresholds for all reaches that ask for them.
-    for (std::size_t r = 0; r < session.streams.size(); ++r) {
-        const auto& thresholds = session.campaign.streams[r].regime.hours_above_c;
-        for (std::size_t k = 0; k < thresholds.size(); ++k) {
-            const std::string name =
-                "hours_above_" + text::slug(text::number(thresholds[k])) + "_c";
-            if (table.find(name) != nullptr)
-                continue;
-            Reals hours;
-            for (std::size_t other = 0; other < session.streams.size(); ++other) {
-                const auto& theirs = session.campaign.streams[other].regime.hours_above_c;
-                const auto found = std::find(theirs.begin(), theirs.end(), thresholds[k]);
-                const auto n = session.streams[other].channels.fibre_m.size();
-                for (Eigen::Index j = 0; j < n; ++j)
-                    hours.push_back(
-                        found == theirs.end()
-                            ? nan
-                            : session.streams[other].channels.hours_above[static_cast<std::size_t>(
-                                  found - theirs.begin())](j));
-            }
-            table.add_real(name, "hours above " + text::number(thresholds[k]) + " degC", "h", hours,
-                           2);
-        }
-    }
+    add_hours_above(table, session);
     positions.append(table, fibre);
     return table;
 }
@@ -299,7 +297,7 @@ Table baths_table(const Session& session) {
     Reals from, to, bias, bias_sd, rmse, drift, drift_sd, gradient, gradient_sd;
     for (const auto& b : session.baths) {
         name.push_back(b.name);
-        use.push_back(b.use == campaign::BathUse::adjust ? "adjust" : "validate");
+        use.emplace_back(b.use == campaign::BathUse::adjust ? "adjust" : "validate");
         from.push_back(b.from_m);
         to.push_back(b.to_m);
         bias.push_back(b.bias_c);

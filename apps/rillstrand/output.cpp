@@ -145,7 +145,7 @@ std::vector<fs::path> Output::commit() {
     if (!fs::is_directory(m_staging))
         throw MachineError{m_folder.string() +
                            ": the output folder was removed during the run; run again"};
-    const std::vector<fs::path> names = files_below(m_staging);
+    std::vector<fs::path> names = files_below(m_staging);
     for (const auto& name : names)
         flush(m_staging / name, false);
     std::string list = m_staging.filename().string() + "\n";

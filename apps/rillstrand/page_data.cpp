@@ -61,7 +61,8 @@ Json background_json(const Session& session) {
     const geo::ChannelPositions& c = session.placement->channels;
     double west = 180.0, east = -180.0, south = 90.0, north = -90.0;
     for (Eigen::Index j = 0; j < c.lon.size(); ++j) {
-        if (!std::isfinite(c.lon(j))) continue;
+        if (!std::isfinite(c.lon(j)))
+            continue;
         west = std::min(west, c.lon(j));
         east = std::max(east, c.lon(j));
         south = std::min(south, c.lat(j));
@@ -72,9 +73,13 @@ Json background_json(const Session& session) {
         geo::warp_background(*session.campaign.page_background,
                              {west - margin, south - margin, east + margin, north + margin});
     std::string bytes;
-    for (const std::byte b : picture.webp) bytes += static_cast<char>(b);
-    return {{"webp", page::base64(bytes)}, {"west", picture.west},   {"south", picture.south},
-            {"east", picture.east},        {"north", picture.north}};
+    for (const std::byte b : picture.webp)
+        bytes += static_cast<char>(b);
+    return {{"webp", page::base64(bytes)},
+            {"west", picture.west},
+            {"south", picture.south},
+            {"east", picture.east},
+            {"north", picture.north}};
 }
 
 /// The record as a picture: means over cells of time and distance, 16 bits each.

@@ -9,10 +9,10 @@ namespace rillstrand::quality {
 
 /// The two legs of a loop, which lie on one ground line, compared by their mean temperatures.
 struct LegComparison {
-    Eigen::Index places = 0;     ///< channels of the first leg that have a second one beside them
-    double difference_K = 0.0;   ///< second minus first, mean; NaN where there is no place
-    double rmse_K = 0.0;         ///< root mean square of the difference
-    double largest_K = 0.0;      ///< difference where the legs part most, after the mean is taken off
+    Eigen::Index places = 0;   ///< channels of the first leg that have a second one beside them
+    double difference_K = 0.0; ///< second minus first, mean; NaN where there is no place
+    double rmse_K = 0.0;       ///< root mean square of the difference
+    double largest_K = 0.0;    ///< difference where the legs part most, after the mean is taken off
     double largest_fibre_m = 0.0; ///< where that is, on the first leg
 };
 
