@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "stream/assemble.hpp"
 
+#include "stream/chain.hpp"
 #include "stream/diffuse.hpp"
 #include "stream/discharge.hpp"
 #include "stream/regime.hpp"
@@ -513,6 +514,7 @@ void assemble(const Context& context, StreamFindings& findings) {
     }
     add_diffuse(c, findings, gains);
     note_owner();
+    join_chains(c.frame, findings.inflows, gains, owner);
     merge_artefacts(findings.artefacts);
     set_channels(c, findings);
     set_discharge(c, gains, owner, findings);
