@@ -1,4 +1,9 @@
 // SPDX-License-Identifier: Apache-2.0
+#if defined(__GNUC__) && !defined(__clang__)
+// The date library's parser, once inlined by g++ 12, sets off a false warning.
+#pragma GCC diagnostic ignored "-Wmaybe-uninitialized"
+#endif
+
 #include "record/stamps.hpp"
 
 #include "base/error.hpp"
