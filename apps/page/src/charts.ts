@@ -4,6 +4,8 @@ import uPlot from 'uplot';
 import { cursor, data, el, grid, moveTo, nearest, watch } from './data';
 
 type Line = { label: string; values: (number | null)[]; dash?: number[]; colour?: string; show?: boolean };
+/// Month, day and time of day, as in the tables.
+const utc = (s: number) => new Date(s * 1000).toISOString().slice(5, 16).replace('T', ' ');
 interface Options { id: string; title: string; x: number[]; lines: Line[]; band?: [number, number]; time?: boolean; unit: string; xUnit?: string; link?: 'fibre' | 'time'; update?: () => (number | null)[][] }
 const css = (name: string) => getComputedStyle(document.documentElement).getPropertyValue(name).trim();
 const palette = ['--line1', '--line2', '--line3', '--line4'];
@@ -13,8 +15,8 @@ export function chart(o: Options): HTMLElement {
     const axis = (label: string, more: object = {}) => ({ label, labelSize: 20, stroke: () => css('--ink'), grid: { stroke: () => css('--grid'), width: 1 }, ticks: { stroke: () => css('--grid') }, font: '12px system-ui, sans-serif', labelFont: '12px system-ui, sans-serif', ...more });
     const plot = new uPlot({
         width: 300, height: 230, tzDate: ts => uPlot.tzDate(new Date(ts * 1000), 'Etc/UTC'),
-        scales: { x: { time: !!o.time } }, axes: [axis(o.xUnit ?? (o.time ? 'UTC' : 'fibre distance (m)'), { size: 34 }), axis(o.unit, { size: 54 })],
-        series: [{ label: o.time ? 'time' : 'at' }, ...o.lines.map((l, k) => ({ label: l.label, stroke: () => css(l.colour ?? palette[k % 4]), width: 1.5, dash: l.dash, points: { show: o.x.length < 3 } }))],
+        scales: { x: { time: !!o.time } }, axes: [axis(o.xUnit ?? (o.time ? 'UTC' : 'fibre distance (m)'), o.time ? { size: 34, space: 90, values: (_: unknown, at: number[]) => at.map(utc) } : { size: 34 }), axis(o.unit, { size: 54 })],
+        series: [o.time ? { label: 'time', value: (_: unknown, s: number | null) => (s == null ? '--' : utc(s)) } : { label: 'at' }, ...o.lines.map((l, k) => ({ label: l.label, stroke: () => css(l.colour ?? palette[k % 4]), width: 1.5, dash: l.dash, points: { show: o.x.length < 3 } }))],
         bands: o.band ? [{ series: o.band, fill: () => css('--band') }] : [],
         cursor: { drag: { x: true, y: false } }, legend: { live: true },
         hooks: { setCursor: [u => { if (o.link && u.cursor.left! >= 0 && u.cursor.event) moveTo({ [o.link]: u.posToVal(u.cursor.left!, 'x') }); }],

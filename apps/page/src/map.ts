@@ -27,7 +27,7 @@ export function map(): HTMLElement | null {
         if (b) L.imageOverlay('data:image/webp;base64,' + b.webp, [[(b.south - lat0) * my, (b.west - lon0) * mx], [(b.north - lat0) * my, (b.east - lon0) * mx]], { alt: 'Background picture' }).addTo(m);
         const dots = placed.map(k => L.circleMarker(at(k), { radius: 4, weight: 0, fillOpacity: 1 }).on('mouseover click', () => moveTo({ fibre: c.fibre_m[k] })).addTo(m));
         const colour = () => {
-            const [, , values, unit] = attributes.find(a => a[0] === choice.value) ?? attributes[0], [low, high] = span(values!);
+            const [, , values, unit] = attributes.find(a => a[0] === choice.value) ?? attributes[0], [low, high] = span(placed.map(k => values![k]));
             dots.forEach((d, i) => { const v = values![placed[i]]; d.setStyle({ fillColor: v == null ? '#999' : rampCss((v - low) / (high - low)) }); });
             const bar = el('span', { class: 'bar' }); bar.style.background = `linear-gradient(90deg, ${[0, 1, 2, 3, 4, 5, 6].map(k => rampCss(k / 6)).join(',')})`;
             legend.replaceChildren(num(low, 2, unit), bar, num(high, 2, unit));
