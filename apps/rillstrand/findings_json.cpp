@@ -53,6 +53,11 @@ Json record_json(const Session& session) {
             {"gaps", gaps}};
 }
 
+/// Enough digits for a reader; the tables' columns carry their own.
+Json rounded(double value, double digits) {
+    return number_json(std::round(value * digits) / digits);
+}
+
 double median_of(const Eigen::ArrayXd& values) {
     std::vector<double> finite;
     for (const double v : values)
@@ -138,14 +143,14 @@ Json stream_json(const Session& session, const Tables& tables) {
         list.push_back({{"stretch", reach.stretch},
                         {"inflows", own},
                         {"resolvable", std::isfinite(reach.detection_limit_median)},
-                        {"detection_limit_fraction", number_json(reach.detection_limit_median)},
-                        {"inflow_temperature_c", number_json(reach.inflow_temperature_c)},
-                        {"inflow_temperature_sd_c", number_json(reach.inflow_temperature_sd_c)},
+                        {"detection_limit_fraction", rounded(reach.detection_limit_median, 1e6)},
+                        {"inflow_temperature_c", rounded(reach.inflow_temperature_c, 1e4)},
+                        {"inflow_temperature_sd_c", rounded(reach.inflow_temperature_sd_c, 1e4)},
                         {"inflow_temperature_given", reach.inflow_temperature_given},
                         {"family_level", reach.family_level},
-                        {"threshold_score", number_json(reach.threshold_z)},
-                        {"noise_c", number_json(reach.noise_c)},
-                        {"drift_c", number_json(reach.drift_c)},
+                        {"threshold_score", rounded(reach.threshold_z, 1e4)},
+                        {"noise_c", rounded(reach.noise_c, 1e4)},
+                        {"drift_c", rounded(reach.drift_c, 1e4)},
                         {"not_inflows", artefacts},
                         {"refuges", refuges},
                         {"closures", closures},
