@@ -113,7 +113,8 @@ void Looker::add_plumes(const Eigen::ArrayXd& water_degC, Eigen::ArrayXd& felt) 
             continue;
         const double step = water_degC[cell] - water_degC[cell - 1];
         for (Eigen::Index i = cell; i < felt.size(); ++i) {
-            const double decay = std::exp(-(double(i - cell) + 0.5) * m_stream.cell_m / inflow.mixing_m);
+            const double decay =
+                std::exp(-(double(i - cell) + 0.5) * m_stream.cell_m / inflow.mixing_m);
             if (decay < 1e-4)
                 break;
             felt[i] += inflow.bank * step * decay;
