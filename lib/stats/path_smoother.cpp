@@ -5,6 +5,7 @@
 
 #include <algorithm>
 #include <cmath>
+#include <limits>
 #include <numbers>
 
 namespace rillstrand::stats {
@@ -164,7 +165,7 @@ std::vector<WeightedSize> walk_sizes(const std::vector<PathData>& series, const 
         heads.push_back(head_of(data));
     constexpr int half = 5; // grid of 11 x 11 over +-2.5 sd of the belief
     std::vector<WeightedSize> grid;
-    double best = -INFINITY;
+    double best = -std::numeric_limits<double>::infinity();
     for (int i = -half; i <= half; ++i) {
         for (int k = -half; k <= half; ++k) {
             const double rate = prior.log_rate_step + 0.5 * i * prior.log_rate_step_sd;
