@@ -18,7 +18,7 @@ constexpr double start_s = 22369.0 * 86400.0 + 7200.0; // 2031-03-31T02:00:00Z
 
 /// The small record that every variant below says in another way.
 const std::vector<double> distances{0.5, 1.0, 1.5};
-const std::vector<std::vector<double>> values{{10.25, 11.5, 12.75}, {10.5, NAN, 13.0}};
+const std::vector<std::vector<double>> values{{10.25, 11.5, 12.75}, {10.5, std::nan(""), 13.0}};
 
 struct Variant {
     std::string name;
