@@ -6,6 +6,7 @@
 #include <algorithm>
 #include <fstream>
 #include <sstream>
+#include <stdexcept>
 
 namespace fs = std::filesystem;
 
@@ -139,6 +140,9 @@ Campaign parse_campaign(const std::string& toml_text, const fs::path& file) {
         throw DataError{reading.file_name + ":" + std::to_string(begin.line) + ":" +
                         std::to_string(begin.column) + ": is not TOML: " +
                         std::string{error.description()} + "; correct this place"};
+    } catch (const std::logic_error& error) {
+        throw DataError{reading.file_name + ": is not TOML: " + error.what() +
+                        "; compare its lines with a campaign file that works"};
     }
     TableReader root{reading, parsed, ""};
     read_head(root, campaign);

@@ -5,6 +5,7 @@
 
 #include <chrono>
 #include <cmath>
+#include <stdexcept>
 
 namespace fs = std::filesystem;
 
@@ -52,6 +53,10 @@ std::optional<double> number_of(const toml::node& node) {
 }
 
 } // namespace
+
+void refuse_spoilt_toml() {
+    throw std::logic_error{"a key is spoilt"};
+}
 
 void Reading::problem(Where where, const std::string& what) {
     problems.add(file_name + ":" + std::to_string(where.line) + ":" + std::to_string(where.column) +

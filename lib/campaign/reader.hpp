@@ -4,7 +4,19 @@
 #include "base/error.hpp"
 #include "campaign/campaign.hpp"
 
+namespace rillstrand::campaign {
+/// @throws std::logic_error, from wherever it is called
+[[noreturn]] void refuse_spoilt_toml();
+} // namespace rillstrand::campaign
+
+// What toml++ 3.3 takes for granted of a text (and, with NDEBUG, builds on) can be false of a
+// spoilt one: there it throws, and the reader refuses the file.
+#pragma push_macro("NDEBUG")
+#undef NDEBUG
+#define TOML_ASSERT(expr)                                                                          \
+    ((expr) ? static_cast<void>(0) : rillstrand::campaign::refuse_spoilt_toml())
 #include <toml++/toml.h>
+#pragma pop_macro("NDEBUG")
 
 #include <functional>
 #include <limits>

@@ -38,6 +38,8 @@ double Basis::part2(Eigen::Index first, const Eigen::Ref<const Eigen::VectorXd>&
 
 Eigen::VectorXd Basis::parts(Eigen::Index first,
                              const Eigen::Ref<const Eigen::VectorXd>& segment) const {
+    if (m_count == 0)
+        return Eigen::VectorXd(0);
     return m_columns.block(first, 0, segment.size(), m_count).transpose() * segment;
 }
 
