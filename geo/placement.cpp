@@ -6,6 +6,7 @@
 #include "control.hpp"
 #include "crs.hpp"
 #include "fibre_map.hpp"
+#include "heights.hpp"
 #include "mark.hpp"
 #include "raster_sample.hpp"
 #include "route.hpp"
@@ -15,7 +16,6 @@
 #include <algorithm>
 #include <cmath>
 #include <limits>
-#include <numbers>
 #include <numeric>
 #include <optional>
 
@@ -25,17 +25,6 @@ namespace {
 
 constexpr double nan = std::numeric_limits<double>::quiet_NaN();
 const char* const wgs84 = "EPSG:4326";
-
-/// Depth below the datum of a channel of a mast or rod.
-double depth_of(double fibre_m, double datum_m, campaign::Direction direction,
-                const std::optional<campaign::Winding>& winding) {
-    double along_m = direction == campaign::Direction::down ? fibre_m - datum_m : datum_m - fibre_m;
-    if (winding) {
-        const double turn_m = std::hypot(std::numbers::pi * winding->diameter_m, winding->pitch_m);
-        along_m *= winding->pitch_m / turn_m;
-    }
-    return along_m;
-}
 
 class Placer {
 public:
@@ -323,21 +312,8 @@ private:
             double& z = m_out.channels.z(j);
             if (m_route && m_route->along_slope() && std::isfinite(m_out.channels.ground_m(j)))
                 z = m_route->height_at(m_out.channels.ground_m(j));
-            else if (known.size() == 1)
-                z = known.front().second;
-            else if (known.size() > 1) {
-                auto next =
-                    std::upper_bound(known.begin(), known.end(), std::pair{m_path_m(j), 1e300});
-                if (next == known.begin())
-                    ++next;
-                if (next == known.end())
-                    --next;
-                const auto before = next - 1;
-                const double w = std::clamp((m_path_m(j) - before->first) /
-                                                std::max(1e-9, next->first - before->first),
-                                            0.0, 1.0);
-                z = before->second + w * (next->second - before->second);
-            }
+            else
+                z = height_between(known, m_path_m(j));
         }
         m_out.lengths = m_route && m_route->along_slope() ? "along the slope" : "horizontal";
     }
@@ -367,7 +343,11 @@ private:
                 c.reason[static_cast<std::size_t>(j)] = NoPosition::placed;
             }
             const double datum_z = elevation_m.value_or(c.z(j));
-            c.z(j) = datum_z - depth_of(m_distance_m(j), datum_m, direction, winding);
+            const double down = direction == campaign::Direction::down ? 1.0 : -1.0;
+            const double along_m = down * (m_distance_m(j) - datum_m);
+            c.z(j) =
+                datum_z - (winding ? winding_depth_m(along_m, winding->diameter_m, winding->pitch_m)
+                                   : along_m);
         }
     }
 
