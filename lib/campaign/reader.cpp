@@ -296,7 +296,7 @@ void TableReader::used_default(const std::string& key, const std::string& value)
         m_reading.defaults.push_back({m_path.empty() ? key : m_path + "." + key, value});
 }
 
-void TableReader::exclusive(const std::vector<std::string>& keys) {
+void TableReader::exclusive(const std::vector<std::string>& keys) const {
     std::string first;
     for (const auto& key : keys) {
         if (!has(key))
@@ -350,7 +350,7 @@ void TableReader::finish() {
     const std::vector<std::string> known{m_known.begin(), m_known.end()};
     for (const auto& [key, node] : m_table) {
         const std::string name{key.str()};
-        if (m_known.count(name) > 0)
+        if (m_known.contains(name))
             continue;
         const std::string near = text::nearest(name, known);
         const std::string shown = m_path.empty() ? name : m_path + "." + name;

@@ -33,7 +33,7 @@ struct Reading {
     Problems problems;
     std::vector<std::array<std::string, 2>> defaults;
     /// `file:line:column: text` is added to the problems.
-    void problem(Where where, const std::string& text);
+    void problem(Where where, const std::string& what);
 };
 
 /// Limits of a number, and the words that say what it must be.
@@ -55,7 +55,7 @@ public:
     Where where() const { return m_where; }
     Where where(const std::string& key) const;
     bool has(const std::string& key) const { return m_table.contains(key); }
-    void problem(const std::string& key, const std::string& text) const;
+    void problem(const std::string& key, const std::string& what) const;
 
     /// Each returns whether the key was there and good; the target keeps its value otherwise.
     bool real(const std::string& key, double& target, Range range = any_number);
@@ -95,7 +95,7 @@ public:
     /// A default was used for a key that is not there.
     void used_default(const std::string& key, const std::string& value);
     /// Says that at most one of these keys may be there.
-    void exclusive(const std::vector<std::string>& keys);
+    void exclusive(const std::vector<std::string>& keys) const;
     /// Calls `use` with a reader of the table, or of each table of an array of tables.
     void table(const std::string& key, const std::function<void(TableReader&)>& use);
     void tables(const std::string& key, const std::function<void(TableReader&)>& use);
