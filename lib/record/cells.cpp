@@ -3,6 +3,7 @@
 
 #include "base/error.hpp"
 #include "base/text.hpp"
+#include "record/decimal.hpp"
 
 #include <algorithm>
 #include <array>
@@ -56,8 +57,21 @@ bool CellReader::is_missing(double value) const {
 
 bool CellReader::number(std::string_view cell, double& value) const {
     const char* begin = cell.data();
+    const char* const end = begin + cell.size();
+    if (take_decimal(begin, end, m_decimal, value) && begin == end) {
+        if (is_missing(value))
+            value = std::numeric_limits<double>::quiet_NaN();
+        return true;
+    }
+    return number_or_word(cell, value);
+}
+
+bool CellReader::number_or_word(std::string_view cell, double& value) const {
+    const char* begin = cell.data();
     const char* end = begin + cell.size();
-    std::array<char, 48> copy{};
+    std::array<char, 64> copy{};
+    // A point is no part of a number with a decimal comma: `1.234,5` is refused, not guessed.
+    const bool foreign = m_decimal == ',' && cell.find('.') != std::string_view::npos;
     if (m_decimal == ',' && cell.size() < copy.size()) {
         std::copy(begin, end, copy.begin());
         std::replace(copy.begin(), copy.begin() + static_cast<std::ptrdiff_t>(cell.size()), ',',
@@ -65,16 +79,20 @@ bool CellReader::number(std::string_view cell, double& value) const {
         begin = copy.data();
         end = begin + cell.size();
     }
-    if (begin != end && *begin == '+')
+    if (end - begin > 1 && *begin == '+' && begin[1] != '-')
         ++begin;
     const auto result = std::from_chars(begin, end, value);
-    if (result.ec == std::errc{} && result.ptr == end && std::isfinite(value)) {
+    if (result.ec == std::errc{} && result.ptr == end && std::isfinite(value) && !foreign) {
         if (is_missing(value))
             value = std::numeric_limits<double>::quiet_NaN();
         return true;
     }
     value = std::numeric_limits<double>::quiet_NaN();
     return std::find(m_missing_words.begin(), m_missing_words.end(), cell) != m_missing_words.end();
+}
+
+double CellReader::seen(double value) const {
+    return is_missing(value) ? std::numeric_limits<double>::quiet_NaN() : value;
 }
 
 float CellReader::temperature(double value, CellCounts& counts) const {
@@ -106,9 +124,16 @@ void refuse_wrong_unit(const CellCounts& counts, const campaign::Record& record,
         return;
     const double mean = counts.out_of_range_sum / static_cast<double>(counts.out_of_range);
     std::string hint = "correct record.temperature_unit or record.valid_range_c";
+    // Temperatures of waters, grounds and airs: 200 to 400 is nothing but kelvin.
     if (record.temperature_unit != campaign::TemperatureUnit::kelvin && mean > 200.0 &&
         mean < 400.0)
         hint = "they look like kelvin: set record.temperature_unit = \"K\"";
+    else if (record.temperature_unit == campaign::TemperatureUnit::kelvin && mean > -60.0 &&
+             mean < 150.0)
+        hint = mean < 32.0 ? "they look like degrees Celsius: set record.temperature_unit = "
+                             "\"degC\""
+                           : "they are no kelvin: set record.temperature_unit to \"degC\" or "
+                             "\"degF\"";
     throw DataError{what + ": " + std::to_string(counts.out_of_range) + " of " +
                     std::to_string(counts.out_of_range + counts.values) +
                     " temperatures lie outside " + text::number(record.valid_range_c[0]) + " to " +

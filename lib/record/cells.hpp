@@ -31,11 +31,15 @@ public:
     /// A temperature in degC, NaN where missing or outside the valid range.
     /// @return false if it is neither a number nor a word for 'missing'
     bool temperature(std::string_view cell, float& value_degC, CellCounts& counts) const;
-    /// The same from a number as it stands in a grid.
+    /// The same from a number as it stands in the file.
     float temperature(double value, CellCounts& counts) const;
+    char decimal() const { return m_decimal; }
+    /// NaN where a number of the file stands for 'missing', else the number.
+    double seen(double value) const;
 
 private:
     bool is_missing(double value) const;
+    bool number_or_word(std::string_view cell, double& value) const;
     campaign::TemperatureUnit m_unit;
     char m_decimal;
     std::vector<std::string> m_missing_words;

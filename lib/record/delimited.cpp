@@ -3,6 +3,7 @@
 
 #include "base/error.hpp"
 #include "base/text.hpp"
+#include "record/columns.hpp"
 #include "record/text_input.hpp"
 
 #include <algorithm>
@@ -13,6 +14,7 @@ namespace rillstrand::record {
 namespace {
 
 constexpr std::size_t most_rows = 20000000;
+constexpr std::size_t most_columns = 10000;
 
 std::string lower(std::string_view text) {
     std::string result{trim(text)};
@@ -21,17 +23,12 @@ std::string lower(std::string_view text) {
     return result;
 }
 
-char tell_delimiter(std::string_view header) {
-    for (const char c : {'\t', ';', ','})
-        if (header.find(c) != std::string_view::npos)
-            return c;
-    return ' ';
-}
-
-bool comma_number(const std::string& cell) {
-    const std::size_t comma = cell.find(',');
-    return comma != std::string::npos && comma > 0 &&
-           cell.find_first_not_of("0123456789,+-eE") == std::string::npos;
+/// Doubled quotation marks inside a quoted cell stand for one.
+std::string unquoted(std::string_view cell) {
+    std::string result{cell};
+    for (std::size_t at = 0; (at = result.find("\"\"", at)) != std::string::npos; ++at)
+        result.erase(at, 1);
+    return result;
 }
 
 } // namespace
@@ -48,20 +45,31 @@ std::optional<std::size_t> Delimited::column(const std::string& name) const {
 }
 
 std::string Delimited::place(std::size_t row) const {
-    return file.string() + ":" + std::to_string(lines[row]);
+    return place_of(lines[row]);
+}
+
+std::string Delimited::place_of(std::size_t line) const {
+    return file.string() + ":" + std::to_string(line);
 }
 
 std::optional<double> Delimited::number(std::size_t row, std::size_t cell) const {
     std::string text = rows[row][cell];
     if (text.empty() || text == "nan" || text == "NaN" || text == "NA")
         return std::nullopt;
-    if (decimal_comma)
+    if (decimal_comma && text.find('.') == std::string::npos)
         std::replace(text.begin(), text.end(), ',', '.');
     const auto value = text::parse_number(text);
     if (!value)
         throw DataError{place(row) + ": " + header[cell] + " is '" + rows[row][cell] +
                         "', which is no number; correct it or leave it empty"};
     return value;
+}
+
+char tell_table_delimiter(std::string_view header) {
+    for (const char c : {'\t', ';', '|', ','})
+        if (header.find(c) != std::string_view::npos)
+            return c;
+    return ' ';
 }
 
 Delimited read_delimited(const std::filesystem::path& file) {
@@ -76,27 +84,33 @@ Delimited read_delimited(const std::filesystem::path& file) {
         if (text.empty() || text.front() == '#')
             continue;
         if (table.header.empty()) {
-            delimiter = tell_delimiter(text);
-            split_cells(text, delimiter, cells);
-            table.header.assign(cells.begin(), cells.end());
+            delimiter = tell_table_delimiter(text);
+            split_cells(text, delimiter, cells, most_columns);
+            if (cells.size() > most_columns)
+                throw DataError{table.place_of(source.number()) +
+                                ": has over 10000 columns; this is no side table"};
+            for (const auto cell : cells)
+                table.header.push_back(unquoted(cell));
             continue;
         }
-        split_cells(delimiter == ' ' ? text : line, delimiter, cells);
+        split_cells(line, delimiter, cells, table.header.size());
         if (cells.size() != table.header.size())
-            throw DataError{file.string() + ":" + std::to_string(source.number()) + ": has " +
-                            std::to_string(cells.size()) + " cells where the header has " +
+            throw DataError{table.place_of(source.number()) + ": has " +
+                            std::to_string(cells.size()) +
+                            (cells.size() == 1 ? " cell" : " cells") + " where the header has " +
                             std::to_string(table.header.size()) + "; complete or remove the line"};
-        table.rows.emplace_back(cells.begin(), cells.end());
+        auto& row = table.rows.emplace_back();
+        for (const auto cell : cells) {
+            row.push_back(unquoted(cell));
+            // With another delimiter than a comma, 12,5 is a number with a decimal comma.
+            table.decimal_comma = table.decimal_comma || looks_decimal_comma(cell);
+        }
         table.lines.push_back(source.number());
         if (table.rows.size() > most_rows)
             throw DataError{file.string() + ": has over 20000000 rows, too many for a side table"};
     }
     if (table.header.empty())
         throw DataError{file.string() + ": is empty; it needs a header and rows"};
-    if (delimiter != ',' && !table.rows.empty())
-        for (const auto& cell : table.rows.front())
-            if (comma_number(cell))
-                table.decimal_comma = true;
     return table;
 }
 

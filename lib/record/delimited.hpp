@@ -4,6 +4,7 @@
 #include <filesystem>
 #include <optional>
 #include <string>
+#include <string_view>
 #include <vector>
 
 namespace rillstrand::record {
@@ -22,12 +23,17 @@ struct Delimited {
     std::optional<std::size_t> column(const std::string& name) const;
     /// `file:line`
     std::string place(std::size_t row) const;
+    std::string place_of(std::size_t line) const;
     /// The number in a cell; nothing where the cell is empty, `nan` or `NA`.
     /// @throws DataError with file, line and text if it is anything else
     std::optional<double> number(std::size_t row, std::size_t cell) const;
 };
 
-/// @throws DataError if the file is missing, empty, no text, larger than 1 GB, or a row is ragged
+/// The delimiter that a header of names tells: tab, `;`, `|`, `,` or blanks, in this order.
+char tell_table_delimiter(std::string_view header);
+
+/// @throws DataError if the file is missing, empty, no text, has over 20,000,000 rows, or a row is
+///         ragged
 Delimited read_delimited(const std::filesystem::path& file);
 
 } // namespace rillstrand::record

@@ -21,6 +21,10 @@ bool same_values(const Trace& a, const Trace& b) {
     return true;
 }
 
+std::string counted(std::int64_t count, const std::string& what) {
+    return std::to_string(count) + " " + what + (count == 1 ? "" : "s");
+}
+
 double shift_to_middle(const campaign::Record& record, double interval_s) {
     switch (record.stamp) {
     case campaign::Stamp::start:
@@ -72,38 +76,51 @@ void RowOrder::take(Trace trace) {
         return;
     }
     ++m_report.duplicates;
-    if (same_values(m_held, trace))
+    const auto is_copy = [&trace](const Trace& other) { return same_values(other, trace); };
+    if (is_copy(m_held) || std::any_of(m_others.begin(), m_others.end(), is_copy))
         return;
-    switch (m_record.duplicates) {
-    case campaign::Duplicates::refuse:
+    if (m_record.duplicates == campaign::Duplicates::refuse)
         throw DataError{trace.origin + ": a trace of " + text::iso_time(trace.time_s) +
                         " stands here and in " + m_held.origin +
                         " with other values; take one out, or say record.duplicates = \"first\" or "
                         "\"mean\""};
-    case campaign::Duplicates::first:
+    if (m_record.duplicates == campaign::Duplicates::first)
         return;
-    case campaign::Duplicates::mean:
-        break;
-    }
-    ++m_copies;
-    const auto weight = 1.0F / static_cast<float>(m_copies);
+    if (m_others.size() >= most_copies)
+        throw DataError{trace.origin + ": is the " + std::to_string(most_copies + 2) +
+                        ". trace of " + text::iso_time(trace.time_s) +
+                        " with other values; see record.text.time_format and the stamps"};
+    m_others.push_back(std::move(trace));
+}
+
+void RowOrder::take_mean() {
     for (std::size_t q = 0; q < m_held.rows.size(); ++q)
         for (Eigen::Index j = 0; j < m_held.rows[q].size(); ++j) {
-            float& kept = m_held.rows[q](j);
-            const float added = trace.rows[q](j);
-            if (std::isnan(kept))
-                kept = added;
-            else if (!std::isnan(added))
-                kept += (added - kept) * weight;
+            double sum = 0.0;
+            int count = 0;
+            const auto add = [&](float value) {
+                if (std::isnan(value))
+                    return;
+                sum += static_cast<double>(value);
+                ++count;
+            };
+            add(m_held.rows[q](j));
+            for (const auto& other : m_others)
+                add(other.rows[q](j));
+            if (count > 0)
+                m_held.rows[q](j) = static_cast<float>(sum / count);
         }
+    m_others.clear();
 }
 
 void RowOrder::hand_on() {
-    m_copies = 1;
+    if (!m_others.empty())
+        take_mean();
     if (m_report.traces > 0 && m_report.interval_s > 0.0 &&
         m_held.time_s - m_last_s > 1.5 * m_report.interval_s)
         m_report.gaps.push_back({m_last_s, m_held.time_s});
     m_last_s = m_held.time_s;
+    m_channels = m_held.rows.front().size();
     m_sink.add_row(m_held.time_s + m_record.clock_offset_s +
                        shift_to_middle(m_record, m_report.interval_s),
                    m_held.rows);
@@ -123,19 +140,28 @@ void RowOrder::finish() {
         warnings.push_back({"record-one-trace",
                             "the record is one trace; nothing that needs change "
                             "in time can be told from it"});
+    if (m_channels == 1)
+        warnings.push_back({"record-one-channel",
+                            "the record has one channel; nothing that needs its neighbours can be "
+                            "told from it"});
     if (m_report.duplicates > 0)
-        warnings.push_back({"record-duplicates", std::to_string(m_report.duplicates) +
-                                                     " traces came twice; each time is kept once"});
+        warnings.push_back(
+            {"record-duplicates", counted(m_report.duplicates, "trace") +
+                                      (m_report.duplicates == 1 ? " is" : " are") +
+                                      " of a time that was there before; each time is kept once"});
     if (m_report.cells.out_of_range > 0)
-        warnings.push_back({"record-out-of-range",
-                            std::to_string(m_report.cells.out_of_range) +
-                                " temperatures outside record.valid_range_c are set missing"});
+        warnings.push_back(
+            {"record-out-of-range", counted(m_report.cells.out_of_range, "temperature") +
+                                        " outside record.valid_range_c " +
+                                        (m_report.cells.out_of_range == 1 ? "is" : "are") +
+                                        " set missing"});
     if (!m_report.gaps.empty()) {
         const auto longest = std::max_element(
             m_report.gaps.begin(), m_report.gaps.end(),
             [](const Gap& a, const Gap& b) { return a.to_s - a.from_s < b.to_s - b.from_s; });
         warnings.push_back(
-            {"record-gap", std::to_string(m_report.gaps.size()) + " gaps in time; the longest is " +
+            {"record-gap", counted(static_cast<std::int64_t>(m_report.gaps.size()), "gap") +
+                               " in time; the longest is " +
                                text::fixed((longest->to_s - longest->from_s) / 3600.0, 2) +
                                " h from " + text::iso_time(longest->from_s)});
     }

@@ -12,12 +12,17 @@ struct Trace {
     std::vector<Eigen::ArrayXf> rows;
 };
 
+/// How many traces of one time with different values may be averaged.
+inline constexpr std::size_t most_copies = 1000;
+
 /// The averaging interval: said, or the median spacing of the stamps.
 double tell_interval(const campaign::Record& record, std::vector<double> sorted_times_s,
                      GatherReport& report);
 
 /// Takes traces in order of time, deals with traces of one time as the campaign says, notes gaps,
-/// and hands rows on with their time moved to the middle of the interval.
+/// and hands rows on with their time moved to the middle of the interval. Of traces with the same
+/// values one is kept; the mean is taken over those that differ, each value over the traces that
+/// have it.
 class RowOrder {
 public:
     RowOrder(const campaign::Record& record, GatherReport& report, Sink& sink);
@@ -28,13 +33,15 @@ public:
 
 private:
     void hand_on();
+    void take_mean();
     const campaign::Record& m_record;
     GatherReport& m_report;
     Sink& m_sink;
     Trace m_held;
     bool m_holding = false;
-    int m_copies = 1;
+    std::vector<Trace> m_others; ///< of the same time with other values, for their mean
     double m_last_s = 0.0;
+    Eigen::Index m_channels = 0;
 };
 
 /// Brings a row to another axis: `nearest` within half a spacing of its own, `linear` between two

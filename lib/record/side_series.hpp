@@ -15,8 +15,10 @@ struct SideValues {
     Warnings warnings;
 };
 
-/// Reads one column of a delimited file with a `time` column. Stamps without an offset are in the
-/// record's zone; the record's clock_offset_s is not applied, it is the instrument's.
+/// Reads one column of a delimited file with a `time` column. Stamps are ISO 8601 or in the
+/// record's time_format; without an offset they are in the record's zone. The record's
+/// clock_offset_s is not applied, it is the instrument's; its words and numbers for 'missing' hold
+/// here too.
 /// @throws DataError naming file, line or column
 SideValues read_side_series(const campaign::SideSeries& series, const campaign::Record& record);
 
@@ -27,7 +29,8 @@ SideValues read_side_series(const campaign::SideSeries& series, const campaign::
 /// largest_gap_s.
 /// @param time_s    middles of the intervals, size n
 /// @param interval_s  their length, 0: values at the instants
-/// @return size n; NaN where the series does not cover the interval
+/// @return size n; the value at the interval's middle where the series does not cover the whole of
+///         it; NaN where it does not cover that either, or pauses longer than largest_gap_s
 Eigen::ArrayXd mean_over_intervals(const SideValues& series, const Eigen::ArrayXd& time_s,
                                    double interval_s, double largest_gap_s);
 

@@ -4,11 +4,11 @@
 #include "base/error.hpp"
 #include "base/text.hpp"
 #include "record/cells.hpp"
-#include "record/stamps.hpp"
+#include "record/columns.hpp"
 #include "record/text_input.hpp"
 
 #include <algorithm>
-#include <cctype>
+#include <array>
 #include <optional>
 
 namespace rillstrand::record {
@@ -17,201 +17,199 @@ namespace {
 
 using campaign::Layout;
 
-constexpr std::size_t most_columns = 1000000;
-
-struct HeadLines {
-    std::vector<std::string> preamble; ///< comments and skipped lines, where a stamp may stand
-    std::vector<std::pair<std::size_t, std::string>> lines; ///< the first two others
-};
-
-HeadLines head_lines(const std::filesystem::path& file, const campaign::RecordText& options) {
-    HeadLines head;
-    LineSource source{file};
-    std::string_view line;
-    int skip = options.skip_lines;
-    while (head.lines.size() < 3 && source.next(line)) {
-        const bool stamp_line = options.time_from_header && head.lines.empty() &&
-                                line.find(*options.time_from_header) != std::string_view::npos;
-        if (skip > 0 || stamp_line || is_comment(line, options)) {
-            if (skip > 0)
-                --skip;
-            if (head.preamble.size() < 1000)
-                head.preamble.emplace_back(line);
-        } else {
-            head.lines.emplace_back(source.number(), line);
-        }
-    }
-    if (head.lines.empty())
-        throw DataError{file.string() + ": is empty; it holds no row of numbers"};
-    return head;
-}
-
-bool looks_decimal_comma(std::string_view cell) {
-    const std::size_t comma = cell.find(',');
-    if (comma == std::string_view::npos || comma == 0 || comma + 1 == cell.size())
-        return false;
-    return std::all_of(cell.begin(), cell.end(), [](char c) {
-        return (c >= '0' && c <= '9') || c == ',' || c == '-' || c == '+' || c == 'e' || c == 'E';
-    });
-}
-
-char tell_delimiter(const HeadLines& head) {
-    const std::string& line = head.lines.back().second;
-    if (line.find('\t') != std::string::npos)
-        return '\t';
-    if (line.find(';') != std::string::npos)
-        return ';';
-    if (line.find(',') == std::string::npos)
-        return ' ';
-    std::vector<std::string_view> cells;
-    split_cells(line, ' ', cells);
-    const bool blanks =
-        cells.size() > 1 && looks_decimal_comma(cells.back()) &&
-        std::count(line.begin(), line.end(), ',') < static_cast<std::ptrdiff_t>(cells.size()) + 1 &&
-        head.lines.front().second.find(',') == std::string::npos;
-    return blanks ? ' ' : ',';
-}
-
-std::string lower(std::string_view text) {
-    std::string result{text};
-    std::transform(result.begin(), result.end(), result.begin(),
-                   [](unsigned char c) { return static_cast<char>(std::tolower(c)); });
-    return result;
-}
-
-/// A column's name without its unit, and the unit: `Temperature [K]`, `distance_km`.
-struct ColumnName {
-    std::string name;
+/// A number with or without a unit of length behind it: `12.5`, `12.5 m`.
+struct Distance {
+    double value = 0.0;
     std::string unit;
 };
 
-ColumnName column_name(std::string_view header) {
-    ColumnName result{lower(trim(header)), {}};
-    const std::size_t open = result.name.find_first_of("[(");
-    if (open != std::string::npos && open > 0) {
-        const std::size_t close = result.name.find_first_of("])", open);
-        if (close != std::string::npos) {
-            result.unit = std::string{trim(result.name.substr(open + 1, close - open - 1))};
-            result.name = std::string{trim(result.name.substr(0, open))};
+std::optional<Distance> header_distance(std::string_view cell, char decimal) {
+    Distance result;
+    cell = trim(cell);
+    for (const std::string_view unit : {"km", "ft", "m"})
+        if (cell.size() > unit.size() && cell.ends_with(unit)) {
+            result.unit = unit;
+            cell = trim(cell.substr(0, cell.size() - unit.size()));
+            break;
         }
-    }
+    std::string number{cell};
+    if (decimal == ',')
+        std::replace(number.begin(), number.end(), ',', '.');
+    const auto value = text::parse_number(number);
+    if (!value)
+        return std::nullopt;
+    result.value = *value;
     return result;
-}
-
-/// Position of a column by its name: as it stands, without regard to capitals and unit, or with
-/// the unit as its ending.
-std::optional<std::size_t> find_column(const std::vector<std::string>& header,
-                                       const std::string& name, std::string& unit) {
-    for (std::size_t i = 0; i < header.size(); ++i)
-        if (header[i] == name)
-            return i;
-    const std::string wanted = lower(name);
-    for (std::size_t i = 0; i < header.size(); ++i) {
-        const ColumnName given = column_name(header[i]);
-        if (given.name == wanted) {
-            unit = given.unit;
-            return i;
-        }
-    }
-    for (std::size_t i = 0; i < header.size(); ++i) {
-        const std::string given = lower(header[i]);
-        if (given.rfind(wanted + "_", 0) != 0)
-            continue;
-        const std::string ending = given.substr(wanted.size() + 1);
-        for (const char* known : {"m", "km", "ft", "c", "degc", "k", "degf", "f", "utc"})
-            if (ending == known) {
-                unit = ending;
-                return i;
-            }
-    }
-    return std::nullopt;
-}
-
-std::optional<campaign::TemperatureUnit> temperature_unit_of(const std::string& unit) {
-    if (unit == "c" || unit == "degc" || unit == "°c" || unit == "deg c")
-        return campaign::TemperatureUnit::degC;
-    if (unit == "k" || unit == "kelvin")
-        return campaign::TemperatureUnit::kelvin;
-    if (unit == "f" || unit == "degf" || unit == "°f")
-        return campaign::TemperatureUnit::degF;
-    return std::nullopt;
-}
-
-std::optional<campaign::DistanceUnit> distance_unit_of(const std::string& unit) {
-    if (unit == "m")
-        return campaign::DistanceUnit::metre;
-    if (unit == "km")
-        return campaign::DistanceUnit::kilometre;
-    if (unit == "ft")
-        return campaign::DistanceUnit::foot;
-    return std::nullopt;
-}
-
-std::string listed(const std::vector<std::string>& header) {
-    std::string list;
-    for (std::size_t i = 0; i < header.size() && i < 12; ++i)
-        list += (i > 0 ? ", '" : "'") + header[i] + "'";
-    return header.size() > 12 ? list + ", …" : list;
 }
 
 class HeadReader {
 public:
-    HeadReader(const std::filesystem::path& file, const campaign::Record& record)
-        : m_record{record}, m_lines{head_lines(file, record.text)} {
+    HeadReader(const std::filesystem::path& file, const campaign::Record& record,
+               const StampReader& stamps)
+        : m_record{record}, m_stamps{stamps}, m_lines{read_head_lines(file, record.text)} {
         m_head.file = file;
-        m_head.delimiter = record.text.delimiter.value_or(tell_delimiter(m_lines));
+        m_head.delimiter =
+            record.text.delimiter.value_or(record::tell_delimiter(m_lines, record.text));
         m_head.temperature_unit = record.temperature_unit;
         m_head.distance_unit = record.distance_unit;
+        tell_decimal();
     }
 
     TextHead read() {
+        pass_over_preamble();
         split(0, m_header);
-        const bool has_header = !first_line_is_data();
-        m_head.cells = m_header.size();
+        const bool has_header = !is_data(m_header);
         const std::size_t data = has_header ? 1 : 0;
         if (m_lines.lines.size() <= data)
             throw DataError{at(0) + "holds a header and no row of numbers; give a file with data"};
-        m_head.first_data_line = m_lines.lines[data].first;
+        m_head.first_data_line = m_lines.lines[data].number;
         split(data, m_first);
-        tell_decimal();
+        m_head.cells = m_header.size();
         if (has_header)
             read_header();
         else
             read_without_header();
         if (m_head.layout == Layout::single)
             find_stamp();
-        else if (m_head.time_cell < m_first.size())
-            m_head.first_stamp = m_first[m_head.time_cell];
-        return m_head;
+        else
+            join_stamp();
+        refuse_two_commas();
+        return std::move(m_head);
     }
 
 private:
     std::string at(std::size_t which) const {
-        return m_head.file.string() + ":" + std::to_string(m_lines.lines[which].first) + ": ";
+        return m_head.file.string() + ":" + std::to_string(m_lines.lines[which].number) + ": ";
     }
 
-    void split(std::size_t which, std::vector<std::string>& to) const {
+    std::vector<std::string> cells_of(std::size_t which) const {
         std::vector<std::string_view> cells;
-        split_cells(m_lines.lines[which].second, m_head.delimiter, cells);
-        if (cells.size() > most_columns)
+        split_cells(m_lines.lines[which].text, m_head.delimiter, cells, most_distances);
+        if (cells.size() > most_distances)
             throw DataError{at(which) + "has over 1000000 columns; this is no trace table"};
-        to.assign(cells.begin(), cells.end());
+        return {cells.begin(), cells.end()};
     }
 
-    bool first_line_is_data() const {
-        const CellReader reader{m_record, m_record.temperature_unit, ','};
-        return std::all_of(m_header.begin(), m_header.end(), [&reader](const std::string& cell) {
-            double value = 0.0;
-            return reader.number(cell, value) || parse_iso(cell);
-        });
-    }
+    void split(std::size_t which, std::vector<std::string>& to) const { to = cells_of(which); }
 
+    /// A comma or a point in the last number that has one: rows come last, words first.
     void tell_decimal() {
-        const bool comma = std::any_of(m_first.begin(), m_first.end(), [](const std::string& cell) {
-            return looks_decimal_comma(cell);
+        m_head.decimal = m_record.text.decimal.value_or('.');
+        if (m_record.text.decimal)
+            return;
+        const CellReader reader{m_record, m_record.temperature_unit, '.'};
+        double value = 0.0;
+        for (std::size_t i = m_lines.lines.size(); i-- > 0;)
+            for (const auto& cell : cells_of(i)) {
+                if (looks_decimal_comma(cell)) {
+                    m_head.decimal = ',';
+                    return;
+                }
+                if (cell.find('.') != std::string::npos && reader.number(cell, value))
+                    return;
+            }
+    }
+
+    bool is_data(const std::vector<std::string>& cells) const {
+        const CellReader reader{m_record, m_record.temperature_unit, m_head.decimal};
+        return std::all_of(cells.begin(), cells.end(), [&](const std::string& cell) {
+            double value = 0.0;
+            return reader.number(cell, value) || m_stamps.fits(cell) || parse_iso(cell);
         });
-        m_head.decimal =
-            m_record.text.decimal.value_or(m_head.delimiter != ',' && comma ? ',' : '.');
+    }
+
+    struct Found {
+        std::optional<std::size_t> time, distance, temperature;
+        std::string time_unit, distance_unit, temperature_unit;
+        Layout layout = Layout::told_from_file;
+    };
+
+    /// The columns that a header line names, and the layout that they make.
+    Found find_columns(const std::vector<std::string>& header, std::size_t next) const {
+        const auto& text = m_record.text;
+        Found found;
+        found.time = find_column(header, text.time_column, found.time_unit);
+        found.distance = find_column(header, text.distance_column, found.distance_unit);
+        found.temperature = find_column(header, text.temperature_column, found.temperature_unit);
+        if (found.distance && found.temperature)
+            found.layout =
+                found.time && m_record.layout != Layout::single ? Layout::tall : Layout::single;
+        else if (header.size() > 1 && found.time && numbers_besides(header, *found.time))
+            found.layout = Layout::wide;
+        else if (header.size() > 1 && !found.time && numbers_besides(header, 0) &&
+                 is_unnamed_time(header, next)) {
+            found.time = 0;
+            found.layout = Layout::wide;
+        }
+        return found;
+    }
+
+    /// A wide table whose time column has another name than the default, or none: told by the
+    /// stamp under it.
+    bool is_unnamed_time(const std::vector<std::string>& header, std::size_t next) const {
+        if (m_record.text.time_column != campaign::RecordText{}.time_column ||
+            header_distance(header[0], m_head.decimal) || next >= m_lines.lines.size())
+            return false;
+        const auto row = cells_of(next);
+        return row.size() == header.size() && m_stamps.fits(row[0]);
+    }
+
+    bool numbers_besides(const std::vector<std::string>& header, std::size_t time) const {
+        for (std::size_t i = 0; i < header.size(); ++i)
+            if (i != time && !header_distance(header[i], m_head.decimal))
+                return false;
+        return true;
+    }
+
+    /// Lines of words above the header need not be counted in skip_lines: the header is the first
+    /// line that names the columns.
+    void pass_over_preamble() {
+        for (std::size_t i = 0; i < m_lines.lines.size(); ++i) {
+            const auto cells = cells_of(i);
+            if (i == 0 && is_data(cells))
+                return;
+            const Layout layout = find_columns(cells, i + 1).layout;
+            if (layout == Layout::told_from_file ||
+                (m_record.layout != Layout::told_from_file && layout != m_record.layout))
+                continue;
+            for (std::size_t k = 0; k < i; ++k)
+                m_lines.preamble.push_back(m_lines.lines[k].text);
+            m_lines.lines.erase(m_lines.lines.begin(),
+                                m_lines.lines.begin() + static_cast<std::ptrdiff_t>(i));
+            return;
+        }
+    }
+
+    void read_header() {
+        const Found found = find_columns(m_header, 1);
+        m_head.layout = m_record.layout;
+        if (m_head.layout == Layout::told_from_file)
+            m_head.layout = found.layout;
+        if (m_head.layout == Layout::told_from_file) {
+            refuse_two_commas();
+            throw DataError{at(0) + "the layout cannot be told from the columns " +
+                            listed(m_header) +
+                            "; say record.layout and the columns' names in [record.text]"};
+        }
+        check_time_unit(found);
+        if (m_head.layout == Layout::wide) {
+            read_wide(found.time);
+            return;
+        }
+        require(m_head.layout == Layout::tall, found.time, "time", m_record.text.time_column);
+        require(true, found.distance, "distance", m_record.text.distance_column);
+        require(true, found.temperature, "temperature", m_record.text.temperature_column);
+        take_units(found.temperature_unit, found.distance_unit);
+        m_head.time_cell = found.time.value_or(m_header.size());
+        m_head.distance_cell = *found.distance;
+        m_head.temperature_cell = *found.temperature;
+        take_powers();
+    }
+
+    void check_time_unit(const Found& found) const {
+        if (found.time_unit == "utc" && m_stamps.zone() != nullptr)
+            throw DataError{at(0) + "the header says the times are in UTC, record.time_zone says " +
+                            m_stamps.zone_name() + "; correct one of the two"};
     }
 
     void take_units(const std::string& temperature, const std::string& distance) {
@@ -228,39 +226,6 @@ private:
                                 "', record.distance_unit says otherwise; correct one of the two"};
             m_head.distance_unit = *unit;
         }
-    }
-
-    void read_header() {
-        std::string time_unit, distance_unit, temperature_unit;
-        const auto& text = m_record.text;
-        const auto time = find_column(m_header, text.time_column, time_unit);
-        const auto distance = find_column(m_header, text.distance_column, distance_unit);
-        const auto temperature = find_column(m_header, text.temperature_column, temperature_unit);
-        m_head.layout = m_record.layout;
-        if (m_head.layout == Layout::told_from_file) {
-            if (time && distance && temperature)
-                m_head.layout = Layout::tall;
-            else if (distance && temperature)
-                m_head.layout = Layout::single;
-            else if (time && numbers_besides(*time))
-                m_head.layout = Layout::wide;
-            else
-                throw DataError{at(0) + "the layout cannot be told from the columns " +
-                                listed(m_header) +
-                                "; say record.layout and the columns' names in [record.text]"};
-        }
-        if (m_head.layout == Layout::wide) {
-            read_wide(time);
-            return;
-        }
-        take_units(temperature_unit, distance_unit);
-        require(m_head.layout == Layout::tall, time, "time", text.time_column);
-        require(true, distance, "distance", text.distance_column);
-        require(true, temperature, "temperature", text.temperature_column);
-        m_head.time_cell = time.value_or(m_header.size());
-        m_head.distance_cell = *distance;
-        m_head.temperature_cell = *temperature;
-        take_powers();
     }
 
     void require(bool wanted, const std::optional<std::size_t>& found, const std::string& what,
@@ -290,42 +255,36 @@ private:
         }
     }
 
-    static std::optional<double> header_distance(std::string_view cell, char decimal) {
-        cell = trim(cell);
-        if (cell.size() > 1 && cell.back() == 'm')
-            cell = trim(cell.substr(0, cell.size() - 1));
-        std::string number{cell};
-        if (decimal == ',')
-            std::replace(number.begin(), number.end(), ',', '.');
-        return text::parse_number(number);
-    }
-
-    bool numbers_besides(std::size_t time) const {
-        for (std::size_t i = 0; i < m_header.size(); ++i)
-            if (i != time && !header_distance(m_header[i], m_head.decimal))
-                return false;
-        return m_header.size() > 1;
-    }
-
     void read_wide(const std::optional<std::size_t>& time) {
         if (!time)
             throw DataError{at(0) + "there is no time column '" + m_record.text.time_column +
                             "'; the columns are " + listed(m_header) +
                             ", say record.text.time_column"};
         m_head.time_cell = *time;
+        std::vector<double> values;
+        std::optional<std::string> unit;
         for (std::size_t i = 0; i < m_header.size(); ++i) {
             if (i == *time)
                 continue;
-            const auto value = header_distance(m_header[i], m_head.decimal);
-            if (!value)
-                throw DataError{at(0) + "column " + std::to_string(i + 1) + ", '" + m_header[i] +
+            const auto distance = header_distance(m_header[i], m_head.decimal);
+            if (!distance)
+                throw DataError{at(0) + "column " + std::to_string(i + 1) + ", '" +
+                                m_header[i].substr(0, 60) +
                                 "', is no distance; the header of a wide table is the time column "
                                 "and then distances"};
-            m_head.distance_m.push_back(to_metres(*value, m_head.distance_unit));
+            if (unit && *unit != distance->unit)
+                throw DataError{at(0) + "column " + std::to_string(i + 1) + ", '" + m_header[i] +
+                                "', has another unit than the distances before it; write all in "
+                                "one unit"};
+            unit = distance->unit;
+            values.push_back(distance->value);
         }
-        if (m_head.distance_m.empty())
+        if (values.empty())
             throw DataError{at(0) +
                             "the header holds no distance; give 'time' and then the distances"};
+        take_units({}, *unit);
+        for (const double value : values)
+            m_head.distance_m.push_back(to_metres(value, m_head.distance_unit));
         check_distances();
     }
 
@@ -335,10 +294,15 @@ private:
         if (m_head.reversed)
             std::reverse(d.begin(), d.end());
         for (std::size_t i = 1; i < d.size(); ++i)
-            if (!(d[i] > d[i - 1]))
-                throw DataError{at(0) + "distance " + text::number(d[i]) + " m comes after " +
-                                text::number(d[i - 1]) +
-                                " m; the distances of a header must increase, each once"};
+            if (!(d[i] > d[i - 1])) {
+                const std::size_t after = m_head.reversed ? i - 1 : i;
+                const std::size_t before = m_head.reversed ? i : i - 1;
+                throw DataError{
+                    at(0) + "distance " + text::number(d[after]) + " m comes after " +
+                    text::number(d[before]) + " m; the distances of a header must " +
+                    (m_head.reversed ? "all decrease as the first and last do" : "increase") +
+                    ", each once"};
+            }
     }
 
     void read_without_header() {
@@ -356,30 +320,68 @@ private:
         m_head.temperature_cell = 1;
     }
 
-    void find_stamp() {
-        const auto& options = m_record.text;
-        if (options.time_from_name) {
-            m_head.stamp = m_head.file.filename().string();
-            if (m_head.stamp.size() > 3 && m_head.stamp.ends_with(".gz"))
-                m_head.stamp.resize(m_head.stamp.size() - 3);
-            m_head.stamp_format = *options.time_from_name;
-            const std::string stem = std::filesystem::path{m_head.stamp}.stem().string();
-            const std::string extension = std::filesystem::path{m_head.stamp}.extension().string();
-            if (!m_head.stamp_format.ends_with(extension) || extension.empty())
-                m_head.stamp = stem;
+    /// `0,5,10,25` under two names: the comma parts cells and decimals alike.
+    void refuse_two_commas() const {
+        if (m_head.delimiter != ',' || m_record.text.delimiter || m_header.size() < 2 ||
+            m_first.size() != 2 * m_header.size() || !is_data(m_first))
             return;
-        }
-        if (options.time_from_header) {
-            for (const auto& line : m_lines.preamble) {
-                const std::size_t found = line.find(*options.time_from_header);
-                if (found == std::string::npos)
-                    continue;
-                m_head.stamp =
-                    std::string{trim(line.substr(found + options.time_from_header->size()))};
+        throw DataError{at(1) + "has twice as many cells as the header names columns: the comma "
+                                "seems to be decimal mark and delimiter at once; write another "
+                                "delimiter, such as ;"};
+    }
+
+    /// With blanks as delimiter a stamp such as `2031-04-05 06:07:08` makes several cells.
+    void join_stamp() {
+        if (m_first.size() > m_header.size() && m_head.delimiter == ' ' &&
+            m_first.size() - m_header.size() <= 4) {
+            const std::size_t more = m_first.size() - m_header.size();
+            std::string joined = m_first[m_head.time_cell];
+            for (std::size_t i = 1; i <= more; ++i)
+                joined += " " + m_first[m_head.time_cell + i];
+            if (m_stamps.fits(joined)) {
+                m_head.time_cells += more;
+                m_head.cells += more;
+                for (std::size_t* cell : {&m_head.distance_cell, &m_head.temperature_cell})
+                    *cell += *cell > m_head.time_cell ? more : 0;
+                for (auto& [quantity, cell] : m_head.power_cells)
+                    cell += cell > m_head.time_cell ? more : 0;
+                m_head.stamp = joined;
                 return;
             }
-            throw DataError{m_head.file.string() + ": no header line holds '" +
-                            *options.time_from_header +
+        }
+        if (m_head.time_cell < m_first.size())
+            m_head.stamp = m_first[m_head.time_cell];
+    }
+
+    void find_stamp() {
+        const std::string file = m_head.file.string() + ": ";
+        try {
+            if (m_record.text.time_from_name) {
+                std::string name = m_head.file.filename().string();
+                if (name.size() > 3 && name.ends_with(".gz"))
+                    name.resize(name.size() - 3);
+                m_head.stamp = name;
+                m_head.clock = m_stamps.read_name(name);
+                return;
+            }
+            m_head.stamp = header_stamp();
+            const auto iso = parse_iso(m_head.stamp);
+            m_head.clock =
+                iso && !m_record.text.time_from_header ? *iso : m_stamps.read(m_head.stamp);
+        } catch (const DataError& error) {
+            throw DataError{file + error.what()};
+        }
+    }
+
+    std::string header_stamp() const {
+        const auto& before = m_record.text.time_from_header;
+        if (before) {
+            for (const auto& line : m_lines.preamble) {
+                const std::size_t found = line.find(*before);
+                if (found != std::string::npos)
+                    return std::string{trim(line.substr(found + before->size()))};
+            }
+            throw DataError{"no header line holds '" + *before +
                             "'; correct record.text.time_from_header, or say how many lines are "
                             "header in record.text.skip_lines"};
         }
@@ -388,14 +390,14 @@ private:
             if (auto iso = find_iso(line))
                 found.push_back(*iso);
         if (found.size() != 1)
-            throw DataError{m_head.file.string() +
-                            (found.empty() ? ": the time of the trace is not told"
-                                           : ": several header lines hold a time") +
+            throw DataError{std::string{found.empty() ? "the time of the trace is not told"
+                                                      : "several header lines hold a time"} +
                             "; say record.text.time_from_name or record.text.time_from_header"};
-        m_head.stamp = found.front();
+        return found.front();
     }
 
     const campaign::Record& m_record;
+    const StampReader& m_stamps;
     HeadLines m_lines;
     TextHead m_head;
     std::vector<std::string> m_header;
@@ -404,13 +406,17 @@ private:
 
 } // namespace
 
-bool is_comment(std::string_view line, const campaign::RecordText& options) {
-    const std::string_view text = trim(line);
-    return text.empty() || (!options.comment.empty() && text.rfind(options.comment, 0) == 0);
+TextHead read_head(const std::filesystem::path& file, const campaign::Record& record,
+                   const StampReader& stamps) {
+    return HeadReader{file, record, stamps}.read();
 }
 
-TextHead read_head(const std::filesystem::path& file, const campaign::Record& record) {
-    return HeadReader{file, record}.read();
+std::string_view stamp_of(const TextHead& head, const std::vector<std::string_view>& cells) {
+    const std::string_view first = cells[head.time_cell];
+    if (head.time_cells == 1)
+        return first;
+    const std::string_view last = cells[head.time_cell + head.time_cells - 1];
+    return {first.data(), static_cast<std::size_t>(last.data() + last.size() - first.data())};
 }
 
 } // namespace rillstrand::record

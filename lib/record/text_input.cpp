@@ -3,13 +3,8 @@
 
 #include "base/error.hpp"
 
-#include <glob.h>
-#include <zlib.h>
-
 #include <algorithm>
-#include <array>
 #include <cstring>
-#include <set>
 
 namespace fs = std::filesystem;
 
@@ -17,180 +12,136 @@ namespace rillstrand::record {
 
 namespace {
 
-constexpr std::size_t buffer_bytes = 1U << 20U;
-constexpr std::size_t longest_line = 64U << 20U;
+constexpr std::string_view byte_order_mark = "\xEF\xBB\xBF";
 
-class GzipFile {
-public:
-    explicit GzipFile(const fs::path& file) : m_name{file.string()} {
-        std::error_code error;
-        if (fs::is_directory(file, error))
-            throw DataError{m_name +
-                            ": is a folder where a text file is needed; name the files in it"};
-        if (!fs::exists(file, error))
-            throw DataError{m_name + ": there is no such file; correct the name"};
-        m_file = gzopen(file.c_str(), "rb");
-        if (m_file == nullptr)
-            throw DataError{m_name + ": cannot be opened; check the rights"};
-        gzbuffer(m_file, static_cast<unsigned>(buffer_bytes));
-    }
-    GzipFile(const GzipFile&) = delete;
-    GzipFile& operator=(const GzipFile&) = delete;
-    GzipFile(GzipFile&&) = delete;
-    GzipFile& operator=(GzipFile&&) = delete;
-    ~GzipFile() { gzclose(m_file); }
+[[noreturn]] void refuse_zero_bytes(const fs::path& file) {
+    throw DataError{file.string() +
+                    ": holds zero bytes, so it is not text in UTF-8; give a text file, or "
+                    "record.layout = \"grid\" for NetCDF"};
+}
 
-    std::size_t read(char* to, std::size_t count) {
-        const int got = gzread(m_file, to, static_cast<unsigned>(count));
-        int code = Z_OK;
-        const char* what = gzerror(m_file, &code);
-        if (got < 0 || code == Z_BUF_ERROR)
-            throw DataError{m_name + (code == Z_BUF_ERROR
-                                          ? ": the gzip stream is cut short; copy the file again"
-                                          : ": cannot be read (" + std::string{what} +
-                                                "); copy the file again")};
-        return static_cast<std::size_t>(got);
-    }
+/// @throws DataError if the text begins as UTF-16 does; whose zero bytes would say less
+void refuse_utf16(const fs::path& file, std::string_view text) {
+    if (text.substr(0, 2) == "\xFF\xFE" || text.substr(0, 2) == "\xFE\xFF")
+        throw DataError{file.string() + ": is text in UTF-16; save it as UTF-8"};
+}
 
-private:
-    std::string m_name;
-    gzFile m_file = nullptr;
-};
+/// Bytes up to the end of the last whole line. A carriage return at the very end does not count:
+/// its line feed may come next.
+std::size_t whole_lines(std::string_view text) {
+    const std::size_t feed = text.rfind('\n');
+    const std::size_t from = feed == std::string_view::npos ? 0 : feed + 1;
+    const std::string_view behind = text.substr(from);
+    if (behind.size() < 2)
+        return from;
+    const std::size_t carriage = behind.rfind('\r', behind.size() - 2);
+    return carriage == std::string_view::npos ? from : from + carriage + 1;
+}
 
 } // namespace
 
-std::vector<fs::path> find_files(const std::vector<std::string>& patterns, const fs::path& folder) {
-    std::set<fs::path> found;
-    Problems problems;
-    for (const auto& pattern : patterns) {
-        const std::string full = (folder / pattern).string();
-        glob_t matches{};
-        const int status = glob(full.c_str(), 0, nullptr, &matches);
-        for (std::size_t i = 0; i < matches.gl_pathc; ++i)
-            found.insert(fs::path{matches.gl_pathv[i]}.lexically_normal());
-        globfree(&matches);
-        if (status != 0)
-            problems.add("record.files: '" + pattern + "' matches no file in " + folder.string() +
-                         "; correct the pattern or put the files there");
-    }
-    problems.throw_if_any();
-    return {found.begin(), found.end()};
+BlockSource::BlockSource(const fs::path& file, std::size_t block_bytes)
+    : m_file{file}, m_bytes{file}, m_block_bytes{block_bytes} {
+    if (!m_bytes.packed())
+        m_block_bytes = std::min<std::size_t>(m_block_bytes, m_bytes.size() + 64);
 }
 
-struct LineSource::Data {
-    explicit Data(const fs::path& path) : file{path}, gzip{path} {}
-    fs::path file;
-    GzipFile gzip;
-    std::string buffer; ///< bytes that are not yet given out, from `start` on
-    std::size_t start = 0;
-    std::size_t consumed = 0; ///< unpacked bytes before buffer[0]
-    std::size_t number = 0;
-    std::size_t offset = 0;
-    bool ended = false;
-    bool opened = false;
-
-    bool fill() {
-        if (ended)
-            return false;
-        consumed += start;
-        buffer.erase(0, start);
-        start = 0;
-        const std::size_t had = buffer.size();
-        if (had > longest_line)
-            throw DataError{file.string() + ":" + std::to_string(number + 1) +
-                            ": the line is longer than 64 MB; this is not a table of text"};
-        buffer.resize(had + buffer_bytes);
-        const std::size_t got = gzip.read(buffer.data() + had, buffer_bytes);
-        buffer.resize(had + got);
-        if (got == 0)
-            ended = true;
-        if (std::memchr(buffer.data() + had, 0, got) != nullptr)
-            throw DataError{file.string() +
-                            ": holds zero bytes, so it is not text in UTF-8; give a "
-                            "text file, or record.layout = \"grid\" for NetCDF"};
-        if (!opened && !buffer.empty()) {
-            opened = true;
-            if (buffer.compare(0, 2, "\xFF\xFE") == 0 || buffer.compare(0, 2, "\xFE\xFF") == 0)
-                throw DataError{file.string() + ": is text in UTF-16; save it as UTF-8"};
-            if (buffer.compare(0, 3, "\xEF\xBB\xBF") == 0)
-                start = 3;
+void BlockSource::check(std::string& block, std::size_t from) {
+    if (!m_opened) {
+        refuse_utf16(m_file, block);
+        m_opened = true;
+        if (block.starts_with(byte_order_mark)) {
+            block.erase(0, byte_order_mark.size());
+            m_next_offset = byte_order_mark.size();
         }
-        return got > 0;
     }
-};
+    if (std::memchr(block.data() + from, 0, block.size() - std::min(from, block.size())) != nullptr)
+        refuse_zero_bytes(m_file);
+}
 
-LineSource::LineSource(fs::path file) : m_data{std::make_unique<Data>(file)} {}
-LineSource::LineSource(LineSource&&) noexcept = default;
-LineSource& LineSource::operator=(LineSource&&) noexcept = default;
-LineSource::~LineSource() = default;
+bool BlockSource::next(std::string& block) {
+    m_offset = m_next_offset;
+    block.swap(m_rest);
+    m_rest.clear();
+    std::size_t whole = 0;
+    while (whole == 0 && !m_ended) {
+        if (block.size() > longest_line_bytes)
+            throw DataError{m_file.string() + ": a line is longer than 64 MB; this is no table of "
+                                              "text"};
+        const std::size_t had = block.size();
+        block.resize(had + m_block_bytes);
+        const std::size_t got = m_bytes.read(block.data() + had, m_block_bytes);
+        block.resize(had + got);
+        m_ended = got < m_block_bytes;
+        check(block, had);
+        m_offset = m_next_offset;
+        whole = m_ended ? block.size() : whole_lines(block);
+    }
+    if (m_ended)
+        whole = block.size();
+    m_rest.assign(block, whole, std::string::npos);
+    block.resize(whole);
+    m_next_offset = m_offset + whole;
+    return whole > 0;
+}
+
+std::string_view take_line(std::string_view& text, const char*& feed) {
+    const char* begin = text.data();
+    const char* end = begin + text.size();
+    if (feed == nullptr || feed < begin) {
+        const void* found = std::memchr(begin, '\n', text.size());
+        feed = found == nullptr ? end : static_cast<const char*>(found);
+    }
+    const void* found = std::memchr(begin, '\r', static_cast<std::size_t>(feed - begin));
+    const char* stop = found == nullptr ? feed : static_cast<const char*>(found);
+    const std::string_view line = text.substr(0, static_cast<std::size_t>(stop - begin));
+    if (stop == end) {
+        text.remove_prefix(text.size());
+        return line;
+    }
+    const bool both = *stop == '\r' && stop + 1 < end && stop[1] == '\n';
+    text.remove_prefix(line.size() + (both ? 2 : 1));
+    return line;
+}
+
+LineSource::LineSource(const fs::path& file, std::size_t block_bytes)
+    : m_blocks{file, block_bytes} {}
 
 bool LineSource::next(std::string_view& line) {
-    Data& d = *m_data;
-    std::size_t scanned = 0;
-    for (;;) {
-        const std::string_view rest = std::string_view{d.buffer}.substr(d.start);
-        const std::size_t end = rest.find_first_of("\n\r", scanned);
-        // A carriage return at the end of the buffer may be followed by its line feed.
-        const bool sure = end != std::string_view::npos &&
-                          (rest[end] == '\n' || end + 1 < rest.size() || d.ended);
-        if (sure) {
-            line = rest.substr(0, end);
-            d.offset = d.consumed + d.start;
-            d.start += end + 1;
-            if (rest[end] == '\r' && end + 1 < rest.size() && rest[end + 1] == '\n')
-                ++d.start;
-            ++d.number;
-            return true;
-        }
-        scanned = end == std::string_view::npos ? rest.size() : end;
-        if (d.fill())
-            continue;
-        if (!d.ended)
-            continue;
-        const std::string_view last = std::string_view{d.buffer}.substr(d.start);
-        if (last.empty())
+    if (m_text.empty()) {
+        if (!m_blocks.next(m_block))
             return false;
-        if (last.find_first_of("\n\r") != std::string_view::npos)
-            continue;
-        line = last;
-        d.offset = d.consumed + d.start;
-        d.start = d.buffer.size();
-        ++d.number;
-        return true;
+        m_text = m_block;
+        m_feed = nullptr;
     }
+    m_offset = m_blocks.offset() + (m_block.size() - m_text.size());
+    line = take_line(m_text, m_feed);
+    ++m_number;
+    return true;
 }
 
-std::size_t LineSource::number() const {
-    return m_data->number;
-}
-std::size_t LineSource::offset() const {
-    return m_data->offset;
-}
-const fs::path& LineSource::file() const {
-    return m_data->file;
-}
-
-std::string read_text(const fs::path& file, std::size_t largest) {
-    GzipFile gzip{file};
-    std::string text;
+void read_text(const fs::path& file, std::size_t largest_bytes, std::string& text) {
+    ByteSource bytes{file};
+    // One byte more than there is, so that the end of the file is seen in one call.
+    std::size_t step = bytes.packed() ? std::size_t{1} << 18U : bytes.size() + 1;
+    step = std::min(step, largest_bytes + 1);
+    std::size_t filled = 0;
     for (;;) {
-        const std::size_t had = text.size();
-        text.resize(had + buffer_bytes);
-        const std::size_t got = gzip.read(text.data() + had, buffer_bytes);
-        text.resize(had + got);
-        if (got == 0)
+        text.resize(filled + step);
+        const std::size_t got = bytes.read(text.data() + filled, step);
+        filled += got;
+        if (got < step)
             break;
-        if (text.size() > largest)
-            throw DataError{file.string() + ": is over " + std::to_string(largest >> 20U) +
+        if (filled > largest_bytes)
+            throw DataError{file.string() + ": is over " + std::to_string(largest_bytes >> 20U) +
                             " MB unpacked, too large for one trace; see record.layout"};
     }
+    text.resize(filled);
+    refuse_utf16(file, text);
     if (std::memchr(text.data(), 0, text.size()) != nullptr)
-        throw DataError{file.string() +
-                        ": holds zero bytes, so it is not text in UTF-8; give a text "
-                        "file, or record.layout = \"grid\" for NetCDF"};
-    if (text.compare(0, 3, "\xEF\xBB\xBF") == 0)
-        text.erase(0, 3);
-    return text;
+        refuse_zero_bytes(file);
+    if (text.starts_with(byte_order_mark))
+        text.erase(0, byte_order_mark.size());
 }
 
 std::string_view trim(std::string_view text) {
@@ -201,40 +152,64 @@ std::string_view trim(std::string_view text) {
     return text;
 }
 
-void split_cells(std::string_view line, char delimiter, std::vector<std::string_view>& cells) {
-    cells.clear();
-    if (delimiter == ' ') {
-        std::size_t at = 0;
-        while (at < line.size()) {
-            const std::size_t begin = line.find_first_not_of(" \t", at);
-            if (begin == std::string_view::npos)
-                break;
-            const std::size_t end = std::min(line.find_first_of(" \t", begin), line.size());
-            cells.push_back(line.substr(begin, end - begin));
-            at = end;
-        }
-        return;
-    }
+namespace {
+
+void split_blanks(std::string_view line, std::vector<std::string_view>& cells, std::size_t most) {
     std::size_t at = 0;
-    for (;;) {
-        std::size_t end = line.find(delimiter, at);
-        const std::size_t quote = line.find_first_not_of(" \t", at);
-        if (quote != std::string_view::npos && quote < end && line[quote] == '"') {
-            const std::size_t close = line.find('"', quote + 1);
+    while (at < line.size() && cells.size() <= most) {
+        const std::size_t begin = line.find_first_not_of(" \t", at);
+        if (begin == std::string_view::npos)
+            break;
+        if (line[begin] == '"') {
+            const std::size_t close = line.find('"', begin + 1);
             if (close != std::string_view::npos) {
-                end = line.find(delimiter, close);
-                cells.push_back(line.substr(quote + 1, close - quote - 1));
-                if (end == std::string_view::npos)
-                    return;
-                at = end + 1;
+                cells.push_back(line.substr(begin + 1, close - begin - 1));
+                at = close + 1;
                 continue;
             }
         }
-        if (end == std::string_view::npos) {
-            cells.push_back(trim(line.substr(at)));
-            return;
+        const std::size_t end = std::min(line.find_first_of(" \t", begin), line.size());
+        cells.push_back(line.substr(begin, end - begin));
+        at = end;
+    }
+}
+
+/// The closing quotation mark of a cell; doubled ones are part of it.
+std::size_t closing_quote(std::string_view line, std::size_t open) {
+    std::size_t at = open + 1;
+    for (;;) {
+        at = line.find('"', at);
+        if (at == std::string_view::npos || at + 1 == line.size() || line[at + 1] != '"')
+            return at;
+        at += 2;
+    }
+}
+
+} // namespace
+
+void split_cells(std::string_view line, char delimiter, std::vector<std::string_view>& cells,
+                 std::size_t most) {
+    cells.clear();
+    if (delimiter == ' ') {
+        split_blanks(line, cells, most);
+        return;
+    }
+    std::size_t at = 0;
+    while (cells.size() <= most) {
+        std::size_t end = line.find(delimiter, at);
+        std::size_t begin = at;
+        while (begin < line.size() && (line[begin] == ' ' || line[begin] == '\t') && begin != end)
+            ++begin;
+        const bool quoted = begin < line.size() && line[begin] == '"' && begin < end;
+        const std::size_t close = quoted ? closing_quote(line, begin) : std::string_view::npos;
+        if (close != std::string_view::npos) {
+            end = line.find(delimiter, close);
+            cells.push_back(line.substr(begin + 1, close - begin - 1));
+        } else {
+            cells.push_back(trim(line.substr(at, end == std::string_view::npos ? end : end - at)));
         }
-        cells.push_back(trim(line.substr(at, end - at)));
+        if (end == std::string_view::npos)
+            return;
         at = end + 1;
     }
 }

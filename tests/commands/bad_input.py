@@ -80,7 +80,7 @@ case("all missing", "record: no trace holds a single temperature; see record.mis
 case("distances not increasing", "record.csv:1: distance 1 m comes after 2 m; the distances of a header must increase, each once",
      record__csv=lines_with(0, LINES[0].replace("time,0,1,2,", "time,0,2,1,")))
 case("unit that contradicts values", "record: 7680 of 7680 temperatures lie outside -80 to 120 degC (their mean is 15.0 as "
-     "written); correct record.temperature_unit or record.valid_range_c",
+     "written); they look like degrees Celsius: set record.temperature_unit = \"degC\"",
      toml=good.TOML.replace("[placement]", "temperature_unit = \"K\"\n[placement]"),
      record__csv=LINES[0] + "".join(good.stamp(i) + ",15.00" * 80 + "\n" for i in range(96)))
 case("directory as record", "record.csv: is a folder without .zgroup or .zarray, so not a whole Zarr store; copy it again "

@@ -62,4 +62,20 @@ inline std::pair<record::GatherReport, KeepSink*> gather(const campaign::Record&
     return {std::move(report), &sink};
 }
 
+/// What is said when a record is refused, without the folder's name.
+inline std::string refusal(const fs::path& folder, campaign::Record options) {
+    KeepSink sink;
+    if (options.files.empty())
+        options.files = {"*.csv"};
+    try {
+        gather(options, folder, sink);
+    } catch (const DataError& error) {
+        std::string what = error.what();
+        for (std::size_t at = 0; (at = what.find(folder.string() + "/")) != std::string::npos;)
+            what.erase(at, folder.string().size() + 1);
+        return what;
+    }
+    return "(taken)";
+}
+
 } // namespace rillstrand::testing

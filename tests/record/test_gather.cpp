@@ -188,21 +188,6 @@ std::vector<Variant> variants() {
     return all;
 }
 
-std::string refusal(const fs::path& folder, campaign::Record options) {
-    KeepSink sink;
-    if (options.files.empty())
-        options.files = {"*.csv"};
-    try {
-        gather(options, folder, sink);
-    } catch (const DataError& error) {
-        std::string what = error.what();
-        for (std::size_t at = 0; (at = what.find(folder.string() + "/")) != std::string::npos;)
-            what.erase(at, folder.string().size() + 1);
-        return what;
-    }
-    return "(taken)";
-}
-
 } // namespace
 
 TEST_CASE("one record in all its variants gives one matrix", "[record]") {
@@ -236,8 +221,8 @@ TEST_CASE("one record in all its variants gives one matrix", "[record]") {
 
 TEST_CASE("gaps stay gaps and are told", "[record]") {
     const fs::path folder = fresh_folder("gather_gap");
-    put(folder / "a.csv", "time,1\n2031-01-01T00:00:00Z,1\n2031-01-01T00:05:00Z,1\n"
-                          "2031-01-01T00:10:00Z,1\n2031-01-01T02:10:00Z,1\n");
+    put(folder / "a.csv", "time,1,2\n2031-01-01T00:00:00Z,1,1\n2031-01-01T00:05:00Z,1,1\n"
+                          "2031-01-01T00:10:00Z,1,1\n2031-01-01T02:10:00Z,1,1\n");
     campaign::Record options;
     options.files = {"a.csv"};
     KeepSink sink;
@@ -246,7 +231,7 @@ TEST_CASE("gaps stay gaps and are told", "[record]") {
     CHECK(report.gaps[0].to_s - report.gaps[0].from_s == 7200.0);
     REQUIRE(report.warnings.size() == 1);
     CHECK(report.warnings[0].text ==
-          "1 gaps in time; the longest is 2.00 h from 2031-01-01T00:10:00Z");
+          "1 gap in time; the longest is 2.00 h from 2031-01-01T00:10:00Z");
 }
 
 TEST_CASE("a repeated hour is told by order, a skipped one is refused", "[record]") {

@@ -61,3 +61,17 @@ TEST_CASE("means over intervals are areas under the line", "[record]") {
     CHECK(std::isnan(record::mean_over_intervals(series, outside, 25.0, 3600.0)(0)));
     CHECK(std::isnan(record::mean_over_intervals(series, times_s, 0.0, 5.0)(1)));
 }
+
+TEST_CASE("words and numbers for 'missing' hold for a series too", "[record][bug]") {
+    const auto series = read("time,a\n1970-01-01T00:00:00Z,5\n1970-01-01T00:10:00Z,-9999\n"
+                             "1970-01-01T00:20:00Z,NA\n1970-01-01T00:30:00Z,6\n",
+                             "a");
+    REQUIRE(series.value.size() == 2);
+    CHECK(series.value(1) == 6.0);
+}
+
+TEST_CASE("a series between blanks may have blanks in its stamps", "[record]") {
+    const auto series = read("time a\n1970-01-01 00:00:00 5\n1970-01-01 00:10:00 6\n", "a");
+    CHECK(series.time_s(1) == 600.0);
+    CHECK(series.value(1) == 6.0);
+}
