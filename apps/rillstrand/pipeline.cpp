@@ -240,9 +240,6 @@ void gather_stage(Session& session, const Output& output, const Context& context
     if (axes.n_place() > 1)
         spacing_m = (axes.distance_m(axes.n_place() - 1) - axes.distance_m(0)) /
                     static_cast<double>(axes.n_place() - 1);
-    else
-        session.warnings.push_back({"record-one-channel", "the record is one channel; nothing that "
-                                                          "needs neighbours can be told from it"});
     session.spatial_response_m = std::max(1.0, 2.0 * spacing_m);
 }
 

@@ -101,7 +101,7 @@ public:
         std::size_t reversed = 0;
         for (const auto& head : job.heads) {
             m_readers.emplace_back(job.record, head);
-            m_axes.push_back(Eigen::Map<const Eigen::ArrayXd>(
+            m_axes.emplace_back(Eigen::Map<const Eigen::ArrayXd>(
                 head.distance_m.data(), static_cast<Eigen::Index>(head.distance_m.size())));
             check_axes(m_axes.front(), job.heads.front().file.string(), m_axes.back(),
                        head.file.string(), job.record.align);

@@ -215,7 +215,7 @@ void check_axes(const Eigen::ArrayXd& first, const std::string& first_file,
         }
     throw DataError{other_file + ": has " + axis(other) + ", but " + first_file + " has " +
                     axis(first) + where +
-                    "; say record.align = \"nearest\" or \"linear\" to bring them to the first"};
+                    R"(; say record.align = "nearest" or "linear" to bring them to the first)"};
 }
 
 } // namespace rillstrand::record

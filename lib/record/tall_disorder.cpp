@@ -52,7 +52,8 @@ public:
         }
         std::stable_sort(m_keys.begin(), m_keys.end(),
                          [](const TraceKey& a, const TraceKey& b) { return a.time_s < b.time_s; });
-        const std::size_t trace_bytes = widest * m_quantities * sizeof(float);
+        const std::size_t trace_bytes =
+            std::max<std::size_t>(widest, 1) * m_quantities * sizeof(float);
         m_bucket_traces = std::max(
             {std::size_t{1}, bucket_bytes / trace_bytes, m_keys.size() / most_buckets + 1});
         m_trace_of.resize(files.size());

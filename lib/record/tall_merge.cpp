@@ -43,7 +43,7 @@ TallMerge::TallMerge(const TextJob& job, const std::vector<TallFile>& files)
     : m_job{job}, m_files{files}, m_quantities{1 + files.front().head->power_cells.size()},
       m_rows{job.record, job.report, job.make_sink(head_of(job, files))} {
     for (const auto& file : files) {
-        m_axes.push_back(Eigen::Map<const Eigen::ArrayXd>(
+        m_axes.emplace_back(Eigen::Map<const Eigen::ArrayXd>(
             file.distance_m.data(), static_cast<Eigen::Index>(file.distance_m.size())));
         m_same.push_back(m_axes.back().size() == m_axes.front().size() &&
                          (m_axes.back() - m_axes.front()).abs().maxCoeff() < 1e-6);

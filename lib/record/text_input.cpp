@@ -55,7 +55,7 @@ void BlockSource::check(std::string& block, std::size_t from) {
             m_next_offset = byte_order_mark.size();
         }
     }
-    if (std::memchr(block.data() + from, 0, block.size() - std::min(from, block.size())) != nullptr)
+    if (block.find('\0', from) != std::string::npos)
         refuse_zero_bytes(m_file);
 }
 
@@ -79,7 +79,7 @@ bool BlockSource::next(std::string& block) {
     }
     if (m_ended)
         whole = block.size();
-    m_rest.assign(block, whole, std::string::npos);
+    m_rest = block.substr(whole);
     block.resize(whole);
     m_next_offset = m_offset + whole;
     return whole > 0;
@@ -138,7 +138,7 @@ void read_text(const fs::path& file, std::size_t largest_bytes, std::string& tex
     }
     text.resize(filled);
     refuse_utf16(file, text);
-    if (std::memchr(text.data(), 0, text.size()) != nullptr)
+    if (text.find('\0') != std::string::npos)
         refuse_zero_bytes(file);
     if (text.starts_with(byte_order_mark))
         text.erase(0, byte_order_mark.size());

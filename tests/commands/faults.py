@@ -42,11 +42,11 @@ def legal(name, warnings, toml=good.TOML, **files):
 NO_STREAM = good.TOML.replace('[[stream]]\nstretch = "reach"\n', "")
 lines = good.RECORD.splitlines(keepends=True)
 legal("a good campaign", [])
-legal("time running backwards", ["warning: time runs backwards 1 times inside a file; the traces were sorted by time"],
+legal("time running backwards", ["warning: time runs backwards 1 time inside a file; the traces were sorted by time"],
       record__csv="".join(lines[:40] + [lines[41], lines[40]] + lines[42:]))
 legal("one trace only", ["warning: the record is one trace; nothing that needs change in time can be told from it"],
       toml=NO_STREAM, record__csv="".join(lines[:2]))
-legal("one channel only", ["warning: the record is one channel; nothing that needs neighbours can be told from it"],
+legal("one channel only", ["warning: the record has one channel; nothing that needs its neighbours can be told from it"],
       toml='[record]\nfiles = ["record.csv"]\n', record__csv=good.record(channels=1))
 legal("no placement", [], toml=good.TOML.replace('[placement]\ncrs = "EPSG:25832"\ntie_points = "tie_points.csv"\n', ""))
 
