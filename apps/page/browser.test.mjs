@@ -15,7 +15,7 @@ try {
     page.on('request', r => { if (!/^(file|data|blob):/.test(r.url())) requests.push(r.url()); });
     await page.goto(pathToFileURL(resolve(process.argv[2])).href);
     await page.waitForTimeout(500);
-    for (const id of ['h-map', 'h-picture', 'h-profile', 'h-at-time', 'h-at-place', 'h-stream0', 'h-quality', 'h-placement']) assert.equal(await page.locator('#' + id).count(), 1, id);
+    for (const id of ['h-map', 'h-picture', 'h-profile', 'h-at-time', 'h-at-place', 'h-stream0', 'h-quality', 'h-placement', 'h-position-sd']) assert.equal(await page.locator('#' + id).count(), 1, id);
     assert.equal(await page.locator('#h-snow0').count(), 0, 'no panel without data');
     assert.match(await page.locator('#h-stream1 ~ p').first().textContent(), /Nothing found.*2\.1.*%/);
     assert.equal(await page.evaluate(() => window.hit), undefined);

@@ -41,6 +41,8 @@ Json channels_json(const Session& session) {
         channels["lon"] = series(c.lon, 7);
         channels["lat"] = series(c.lat, 7);
         channels["position_sd_m"] = series(c.position_sd_m, 2);
+        channels["along_sd_m"] = series(c.along_sd_m, 2);
+        channels["across_sd_m"] = series(c.across_sd_m, 2);
         if (c.station_m.isFinite().any())
             channels["station_m"] = series(c.station_m, 1);
     }

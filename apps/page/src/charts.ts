@@ -3,7 +3,7 @@
 import uPlot from 'uplot';
 import { cursor, data, el, grid, moveTo, nearest, watch } from './data';
 
-type Line = { label: string; values: (number | null)[]; dash?: number[]; colour?: string; show?: boolean };
+type Line = { label: string; values: (number | null)[]; dash?: number[]; colour?: string; dots?: boolean };
 /// Month, day and time of day, as in the tables.
 const utc = (s: number) => new Date(s * 1000).toISOString().slice(5, 16).replace('T', ' ');
 interface Options { id: string; title: string; x: number[]; lines: Line[]; band?: [number, number]; time?: boolean; unit: string; xUnit?: string; link?: 'fibre' | 'time'; update?: () => (number | null)[][] }
@@ -16,11 +16,11 @@ export function chart(o: Options): HTMLElement {
     const plot = new uPlot({
         width: 300, height: 230, tzDate: ts => uPlot.tzDate(new Date(ts * 1000), 'Etc/UTC'),
         scales: { x: { time: !!o.time } }, axes: [axis(o.xUnit ?? (o.time ? 'UTC' : 'fibre distance (m)'), o.time ? { size: 34, space: 90, values: (_: unknown, at: number[]) => at.map(utc) } : { size: 34 }), axis(o.unit, { size: 54 })],
-        series: [o.time ? { label: 'time', value: (_: unknown, s: number | null) => (s == null ? '--' : utc(s)) } : { label: 'at' }, ...o.lines.map((l, k) => ({ label: l.label, stroke: () => css(l.colour ?? palette[k % 4]), width: 1.5, dash: l.dash, points: { show: o.x.length < 3 } }))],
+        series: [o.time ? { label: 'time', value: (_: unknown, s: number | null) => (s == null ? '--' : utc(s)) } : { label: 'at' }, ...o.lines.map((l, k) => ({ label: l.label, stroke: () => css(l.colour ?? palette[k % 4]), width: 1.5, dash: l.dash, paths: l.dots ? () => null : undefined, points: { show: !!l.dots || o.x.length < 3, size: l.dots ? 8 : undefined, fill: () => css(l.colour ?? palette[k % 4]) } }))],
         bands: o.band ? [{ series: o.band, fill: () => css('--band') }] : [],
         cursor: { drag: { x: true, y: false } }, legend: { live: true },
         hooks: { setCursor: [u => { if (o.link && u.cursor.left! >= 0 && u.cursor.event) moveTo({ [o.link]: u.posToVal(u.cursor.left!, 'x') }); }],
-            draw: [u => { if (!o.link) return; const x = u.valToPos(cursor[o.link], 'x', true); if (x < u.bbox.left || x > u.bbox.left + u.bbox.width) return; u.ctx.save(); u.ctx.strokeStyle = css('--cursor'); u.ctx.lineWidth = 1.5; u.ctx.beginPath(); u.ctx.moveTo(x, u.bbox.top); u.ctx.lineTo(x, u.bbox.top + u.bbox.height); u.ctx.stroke(); u.ctx.restore(); }] },
+            draw: [u => { if (!o.link) return; const x = u.valToPos(cursor[o.link], 'x', true); if (x < u.bbox.left || x > u.bbox.left + u.bbox.width) return; u.ctx.save(); u.ctx.strokeStyle = css('--cursor'); u.ctx.lineWidth = 1.5; u.ctx.setLineDash([]); u.ctx.beginPath(); u.ctx.moveTo(x, u.bbox.top); u.ctx.lineTo(x, u.bbox.top + u.bbox.height); u.ctx.stroke(); u.ctx.restore(); }] },
     } as any, [o.x, ...o.lines.map(l => l.values)] as any, box);
     new ResizeObserver(() => { if (box.clientWidth > 50) plot.setSize({ width: box.clientWidth, height: 230 }); }).observe(box);
     if (o.link || o.update) watch(() => { if (o.update) plot.setData([o.x, ...o.update()] as any, false); else plot.redraw(false); });

@@ -5,6 +5,7 @@ export interface Channels {
     fibre_m: number[]; mean_c: (number | null)[]; p05_c: (number | null)[]; p95_c: (number | null)[];
     daily_range_c: (number | null)[]; noise_c: (number | null)[]; stretch: string[]; flag: string[];
     lon?: (number | null)[]; lat?: (number | null)[]; position_sd_m?: (number | null)[];
+    along_sd_m?: (number | null)[]; across_sd_m?: (number | null)[];
     station_m?: (number | null)[];
 }
 export interface Picture {

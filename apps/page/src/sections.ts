@@ -2,19 +2,8 @@
 // What was found and how sure it is, in words and tables; panels without data are absent.
 import { chart } from './charts';
 import { data, el, findings, isolated, list, metres, moveTo, num, percent, pm, Row } from './data';
-
-function table(heads: string[], rows: (string | HTMLElement)[][], caption: string): HTMLElement {
-    return el('div', { class: 'scroll', tabindex: '0', role: 'region', 'aria-label': caption }, el('table', {}, el('caption', {}, caption),
-        el('thead', {}, el('tr', {}, ...heads.map(h => el('th', { scope: 'col' }, h)))),
-        el('tbody', {}, ...rows.map(r => el('tr', {}, ...r.map(c => el('td', {}, c)))))));
-}
-function panel(id: string, title: string, ...kids: (Node | null | false | undefined)[]): HTMLElement {
-    return el('section', { 'aria-labelledby': id, class: 'wide' }, el('h2', { id }, title), ...(kids.filter(Boolean) as Node[]));
-}
-const facts = (pairs: [string, string][]) => el('dl', {}, ...pairs.flatMap(([k, v]) => [el('dt', {}, k), el('dd', {}, v)]));
-const folded = (title: string, ...kids: (Node | string)[]) => el('details', {}, el('summary', {}, title), ...kids);
-const texts = (items: string[]) => el('ul', {}, ...items.map(t => el('li', {}, t)));
-const sentence = (w: any) => (typeof w === 'string' ? w : String(w?.text ?? ''));
+import { facts, folded, panel, sentence, table, texts } from './parts';
+import { placement } from './placement';
 
 export function header(): HTMLElement[] {
     const r = findings.record ?? {}, key: HTMLElement[] = [];
@@ -88,12 +77,11 @@ export function others(): HTMLElement[] {
 }
 
 export function trust(): HTMLElement[] {
-    const q = findings.quality ?? {}, p = findings.placement, r = findings.record ?? {}, out: HTMLElement[] = [];
+    const q = findings.quality ?? {}, r = findings.record ?? {}, out: HTMLElement[] = [];
     out.push(panel('h-quality', 'Quality', facts([['Noise, middle channel', num(q.noise_c, 3, '\u00b0C')], ['Spatial response', metres(q.spatial_response_m)], ['Missing', percent(r.missing_fraction)], ['Gaps', String(list(r.gaps).length)], ...((q.legs ? [['Second leg minus first', `${num(q.legs.difference_c, 3, 'K')}, rmse ${num(q.legs.rmse_c, 3, 'K')}; they part most at ${metres(q.legs.parts_most_fibre_m)} (${num(q.legs.parts_most_c, 2, 'K')})`]] : []) as [string, string][])]),
         list(q.baths).length > 0 ? table(['Bath', 'Use', 'Bias', 'RMSE', 'Drift', 'Gradient inside'], list(q.baths).map(b => [String(b.name ?? ''), String(b.use ?? ''), pm(b.bias_c, b.bias_sd_c, 3, 'K'), num(b.rmse_c, 3, 'K'), pm(b.drift_kd, b.drift_sd_kd, 3, 'K/d'), num(b.gradient_km, 4, 'K/m')]), 'Baths against their references') : el('p', {}, 'No reference bath is declared: nothing says how far off the temperatures are.'),
         list(findings.warnings).length > 0 && el('h3', {}, 'Warnings'), list(findings.warnings).length > 0 && texts(list(findings.warnings).map(sentence))));
-    if (p) out.push(panel('h-placement', 'Placement', facts([['System', `${p.crs_name ?? ''} (${p.crs ?? ''})`], ['To WGS 84', `${p.operation_to_wgs84 ?? ''}, accuracy ${metres(p.operation_accuracy_m)}`], ['Slack', num(p.slack, 3)], ['Residual, rms', metres(p.residual_rms_m)]]),
-        list(p.tie_points).length > 0 && table(['Tie point', 'Fibre', 'sd', 'Residual', 'Slack to the next', 'Used'], list(p.tie_points).map(t => [String(t.label ?? ''), metres(t.fibre_m), metres(t.sd_m), metres(t.residual_m), num(t.slack, 3), t.used === false ? `no: ${t.reason ?? ''}` : 'yes']), 'Tie points')));
+    out.push(...placement());
     if (list(findings.cautions).length) out.push(panel('h-cautions', 'Cautions', texts(list(findings.cautions).map(sentence))));
     const v = findings.provenance ?? {};
     out.push(panel('h-provenance', 'Provenance', facts([['Made by', `${v.program ?? 'rillstrand'} ${v.version ?? ''}, ${v.time ?? ''}`], ['Campaign file', `${v.campaign_file ?? ''} (SHA-256 ${v.campaign_sha256 ?? ''})`]]),
