@@ -265,8 +265,8 @@ PlacedPath Adjustment::place(const Eigen::ArrayXd& path_m) const {
         for (Eigen::Index j = 0; j < n; ++j) {
             last = std::max(last, along.mean(j)); // the cable never runs backwards
             out.ground_m(j) = last;
-            out.xy.row(j) = m_route->at(last).transpose().array();
         }
+        out.xy = m_route->at_all(out.ground_m);
         out.along_variance = along.variance;
         out.across_variance.setConstant(m_across_variance);
         return out;

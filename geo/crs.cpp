@@ -6,6 +6,8 @@
 
 #include <geodesic.h>
 #include <proj.h>
+#include <tbb/blocked_range.h>
+#include <tbb/parallel_for.h>
 
 #include <cmath>
 #include <limits>
@@ -115,15 +117,31 @@ Transformation::~Transformation() = default;
 
 PointsXY Transformation::apply(const PointsXY& points, bool forward) const {
     PointsXY result = points;
-    const auto n = static_cast<std::size_t>(points.rows());
-    double* x = result.data();
-    double* y = x + n;
-    proj_errno_reset(m_data->object.get());
-    proj_trans_generic(m_data->object.get(), forward ? PJ_FWD : PJ_INV, x, sizeof(double), n, y,
-                       sizeof(double), n, nullptr, 0, 0, nullptr, 0, 0);
-    for (std::size_t i = 0; i < n; ++i)
-        if (!std::isfinite(x[i]) || !std::isfinite(y[i]))
-            x[i] = y[i] = nan;
+    const Eigen::Index n = points.rows();
+    const auto work = [&](PJ* object, Eigen::Index first, Eigen::Index count) {
+        double* x = result.data() + first;
+        double* y = x + n;
+        const auto size = static_cast<std::size_t>(count);
+        proj_errno_reset(object);
+        proj_trans_generic(object, forward ? PJ_FWD : PJ_INV, x, sizeof(double), size, y,
+                           sizeof(double), size, nullptr, 0, 0, nullptr, 0, 0);
+        for (std::size_t i = 0; i < size; ++i)
+            if (!std::isfinite(x[i]) || !std::isfinite(y[i]))
+                x[i] = y[i] = nan;
+    };
+    // The first points go through our own object, which then knows the operation that was used.
+    constexpr Eigen::Index share = 50000;
+    work(m_data->object.get(), 0, std::min(n, share));
+    if (n <= share)
+        return result;
+    tbb::parallel_for(tbb::blocked_range<Eigen::Index>{share, n, share},
+                      [&](const tbb::blocked_range<Eigen::Index>& part) {
+                          const Context context = new_context();
+                          const Object copy{proj_clone(context.get(), m_data->object.get())};
+                          if (!copy)
+                              throw MachineError{"PROJ has no memory for another transformation"};
+                          work(copy.get(), part.begin(), part.end() - part.begin());
+                      });
     return result;
 }
 

@@ -13,6 +13,9 @@
 #include "survey.hpp"
 #include "tie_checks.hpp"
 
+#include <tbb/blocked_range.h>
+#include <tbb/parallel_for.h>
+
 #include <algorithm>
 #include <cmath>
 #include <limits>
@@ -25,6 +28,16 @@ namespace {
 
 constexpr double nan = std::numeric_limits<double>::quiet_NaN();
 const char* const wgs84 = "EPSG:4326";
+
+/// The same work for every channel, on all processors where they are many.
+template <class Work> void for_channels(Eigen::Index n, const Work& work) {
+    constexpr Eigen::Index share = 50000;
+    tbb::parallel_for(tbb::blocked_range<Eigen::Index>{0, n, share},
+                      [&](const tbb::blocked_range<Eigen::Index>& part) {
+                          for (Eigen::Index j = part.begin(); j < part.end(); ++j)
+                              work(j);
+                      });
+}
 
 class Placer {
 public:
@@ -184,12 +197,12 @@ private:
     void place_channels(const Adjustment& adjustment) {
         const Eigen::Index n = m_distance_m.size();
         Eigen::ArrayXd path_m(n);
-        for (Eigen::Index j = 0; j < n; ++j)
-            path_m(j) = m_map.path_m(m_distance_m(j));
+        for_channels(n, [&](Eigen::Index j) { path_m(j) = m_map.path_m(m_distance_m(j)); });
         std::vector<Eigen::Index> order(static_cast<std::size_t>(n));
         std::iota(order.begin(), order.end(), Eigen::Index{0});
-        std::stable_sort(order.begin(), order.end(),
-                         [&](Eigen::Index a, Eigen::Index b) { return path_m(a) < path_m(b); });
+        if (!std::is_sorted(path_m.begin(), path_m.end()))
+            std::stable_sort(order.begin(), order.end(),
+                             [&](Eigen::Index a, Eigen::Index b) { return path_m(a) < path_m(b); });
         Eigen::ArrayXd sorted(n);
         for (Eigen::Index k = 0; k < n; ++k)
             sorted(k) = path_m(order[static_cast<std::size_t>(k)]);
@@ -201,14 +214,14 @@ private:
             *a = Eigen::ArrayXd::Constant(n, nan);
         c.leg.resize(static_cast<std::size_t>(n));
         c.reason.assign(static_cast<std::size_t>(n), NoPosition::placed);
-        for (Eigen::Index k = 0; k < n; ++k) {
+        for_channels(n, [&](Eigen::Index k) {
             const Eigen::Index j = order[static_cast<std::size_t>(k)];
             m_xy.row(j) = path.xy.row(k);
             c.along_sd_m(j) = std::sqrt(path.along_variance(k));
             c.across_sd_m(j) = std::sqrt(path.across_variance(k));
             c.ground_m(j) = path.ground_m(k);
             c.leg[static_cast<std::size_t>(j)] = m_map.leg(m_distance_m(j));
-        }
+        });
         m_path_m = path_m;
         refuse_beyond_survey();
         interpolate_heights();
@@ -308,13 +321,13 @@ private:
             if (std::isfinite(z) && m_ties[k].used)
                 known.emplace_back(m_ties[k].path_m, z);
         }
-        for (Eigen::Index j = 0; j < m_path_m.size(); ++j) {
+        for_channels(m_path_m.size(), [&](Eigen::Index j) {
             double& z = m_out.channels.z(j);
             if (m_route && m_route->along_slope() && std::isfinite(m_out.channels.ground_m(j)))
                 z = m_route->height_at(m_out.channels.ground_m(j));
             else
                 z = height_between(known, m_path_m(j));
-        }
+        });
         m_out.lengths = m_route && m_route->along_slope() ? "along the slope" : "horizontal";
     }
 
@@ -407,15 +420,19 @@ private:
         auto& c = m_out.channels;
         double with = 0.0;
         double last = nan;
-        for (Eigen::Index j = 0; j < m_xy.rows(); ++j) {
+        for_channels(m_xy.rows(), [&](Eigen::Index j) {
             if (!std::isfinite(m_xy(j, 0)))
-                continue;
+                return;
             const Nearest place = river.nearest(m_xy(j, 0), m_xy(j, 1));
             c.station_m(j) = place.measure_m;
             c.offset_m(j) = place.offset_m;
+        });
+        for (const double station_m : c.station_m) {
+            if (std::isnan(station_m))
+                continue;
             if (std::isfinite(last))
-                with += place.measure_m > last ? 1.0 : -1.0;
-            last = place.measure_m;
+                with += station_m > last ? 1.0 : -1.0;
+            last = station_m;
         }
         for (const auto& stream : m_campaign.streams) {
             const bool rising = with > 0.0;
@@ -478,6 +495,7 @@ private:
             cable.stretch = name;
             cable.from_m = from_m;
             cable.to_m = to_m;
+            cable.vertices.reserve(static_cast<std::size_t>(range.count));
             double first = nan, last = nan;
             for (Eigen::Index j = range.first; j < range.first + range.count; ++j) {
                 if (!std::isfinite(c.x(j)))

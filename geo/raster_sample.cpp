@@ -4,6 +4,8 @@
 #include <cpl_error.h>
 #include <gdal_priv.h>
 #include <ogr_spatialref.h>
+#include <tbb/blocked_range.h>
+#include <tbb/parallel_for.h>
 
 #include <array>
 #include <cmath>
@@ -97,23 +99,31 @@ std::array<double, 2> slope_aspect(Cells& cells, double column, double row, doub
     return {slope, slope > 0.0 ? aspect : nan};
 }
 
-} // namespace
+using Dataset = std::unique_ptr<GDALDataset, CloseDataset>;
 
-RasterSamples sample_raster(const std::filesystem::path& file, const PointsXY& lonlat,
-                            bool with_slope, const std::string& key) {
-    GDALAllRegister();
+Dataset open_raster(const std::filesystem::path& file, const std::string& key) {
     CPLPushErrorHandler(CPLQuietErrorHandler);
     const std::array<const char*, 6> drivers{"GTiff", "AAIGrid", "HFA", "SRTMHGT", "PNG", nullptr};
-    const std::unique_ptr<GDALDataset, CloseDataset> dataset{GDALDataset::Open(
-        file.c_str(), GDAL_OF_RASTER | GDAL_OF_READONLY, drivers.data(), nullptr, nullptr)};
+    Dataset dataset{GDALDataset::Open(file.c_str(), GDAL_OF_RASTER | GDAL_OF_READONLY,
+                                      drivers.data(), nullptr, nullptr)};
     CPLPopErrorHandler();
     if (!dataset)
         throw DataError{file.string() +
                         ": cannot be read as a raster (GeoTIFF, ASCII grid, IMG, HGT); correct " +
                         key};
+    return dataset;
+}
+
+/// Where a raster lies: cell = inverse applied to x, y of its own system.
+struct Frame {
     std::array<double, 6> transform{}, inverse{};
-    const OGRSpatialReference* reference = dataset->GetSpatialRef();
-    if (reference == nullptr || dataset->GetGeoTransform(transform.data()) != CE_None ||
+    Crs crs;
+};
+
+Frame frame_of(GDALDataset& dataset, const std::filesystem::path& file, const std::string& key) {
+    std::array<double, 6> transform{}, inverse{};
+    const OGRSpatialReference* reference = dataset.GetSpatialRef();
+    if (reference == nullptr || dataset.GetGeoTransform(transform.data()) != CE_None ||
         GDALInvGeoTransform(transform.data(), inverse.data()) == 0)
         throw DataError{file.string() +
                         ": has no coordinate system or no place on the ground; georeference it"};
@@ -122,26 +132,26 @@ RasterSamples sample_raster(const std::filesystem::path& file, const PointsXY& l
     reference->exportToWkt(&wkt, options.data());
     const std::string crs_text = wkt == nullptr ? "" : wkt;
     CPLFree(wkt);
-    const Crs crs{crs_text, key};
-    const PointsXY xy = Transformation{Crs{"EPSG:4326", key}, crs}.forward(lonlat);
-    Cells cells{*dataset->GetRasterBand(1)};
-    RasterSamples out;
-    out.value = Eigen::ArrayXd::Constant(xy.rows(), nan);
-    if (with_slope)
-        out.slope_deg = out.aspect_deg = out.value;
-    for (Eigen::Index i = 0; i < xy.rows(); ++i) {
+    return {transform, inverse, Crs{crs_text, key}};
+}
+
+/// Samples the points [first, last) into `out`.
+void sample_part(GDALDataset& dataset, const Frame& frame, const PointsXY& xy, Eigen::Index first,
+                 Eigen::Index last, RasterSamples& out) {
+    const bool with_slope = out.slope_deg.size() > 0, degrees = frame.crs.geographic();
+    const auto& [transform, inverse, crs] = frame;
+    Cells cells{*dataset.GetRasterBand(1)};
+    for (Eigen::Index i = first; i < last; ++i) {
         if (!std::isfinite(xy(i, 0)))
             continue;
         const double column = inverse[0] + inverse[1] * xy(i, 0) + inverse[2] * xy(i, 1);
         const double row = inverse[3] + inverse[4] * xy(i, 0) + inverse[5] * xy(i, 1);
         out.value(i) =
             std::abs(column) < 1e9 && std::abs(row) < 1e9 ? bilinear(cells, column, row) : nan;
-        if (!std::isfinite(out.value(i)))
-            ++out.outside;
         if (!with_slope || !std::isfinite(out.value(i)))
             continue;
         double width_m = std::abs(transform[1]), height_m = std::abs(transform[5]);
-        if (crs.geographic()) {
+        if (degrees) {
             width_m = geodesic_m(xy(i, 0), xy(i, 1), xy(i, 0) + transform[1], xy(i, 1));
             height_m = geodesic_m(xy(i, 0), xy(i, 1), xy(i, 0), xy(i, 1) + transform[5]);
         }
@@ -149,6 +159,30 @@ RasterSamples sample_raster(const std::filesystem::path& file, const PointsXY& l
         out.slope_deg(i) = found[0];
         out.aspect_deg(i) = found[1];
     }
+}
+
+} // namespace
+
+RasterSamples sample_raster(const std::filesystem::path& file, const PointsXY& lonlat,
+                            bool with_slope, const std::string& key) {
+    GDALAllRegister();
+    const Dataset dataset = open_raster(file, key);
+    const Frame frame = frame_of(*dataset, file, key);
+    const PointsXY xy = Transformation{Crs{"EPSG:4326", key}, frame.crs}.forward(lonlat);
+    const Eigen::Index n = xy.rows();
+    RasterSamples out;
+    out.value = Eigen::ArrayXd::Constant(n, nan);
+    if (with_slope)
+        out.slope_deg = out.aspect_deg = out.value;
+    constexpr Eigen::Index share = 50000; // worth a handle of its own: GDAL's serve one thread
+    sample_part(*dataset, frame, xy, 0, std::min(n, share), out);
+    if (n > share)
+        tbb::parallel_for(tbb::blocked_range<Eigen::Index>{share, n, share},
+                          [&](const tbb::blocked_range<Eigen::Index>& part) {
+                              const Dataset own = open_raster(file, key);
+                              sample_part(*own, frame, xy, part.begin(), part.end(), out);
+                          });
+    out.outside = (xy.col(0).isFinite() && !out.value.isFinite()).count();
     return out;
 }
 

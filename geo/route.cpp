@@ -5,6 +5,8 @@
 
 #include <cpl_error.h>
 #include <ogrsf_frmts.h>
+#include <tbb/blocked_range.h>
+#include <tbb/parallel_for.h>
 
 #include <algorithm>
 #include <array>
@@ -186,6 +188,20 @@ Polyline::Polyline(const PointsXY& xy, const Eigen::ArrayXd& z) {
         const double rise_m = m_along_slope ? m_z(i) - m_z(i - 1) : 0.0;
         m_measure(i) = m_measure(i - 1) + std::hypot(flat_m, rise_m);
     }
+    box_pieces();
+}
+
+void Polyline::box_pieces() {
+    const Eigen::Index pieces = m_xy.rows() - 1;
+    // As many boxes as pieces in a box: the search looks at the square root of the pieces.
+    const auto size = static_cast<Eigen::Index>(
+        std::ceil(std::sqrt(static_cast<double>(std::max<Eigen::Index>(1, pieces)))));
+    for (Eigen::Index k = 0; k < pieces; k += size) {
+        const Eigen::Index end = std::min(k + size, pieces);
+        const auto part = m_xy.middleRows(k, end - k + 1);
+        m_boxes.push_back({k, end, part.col(0).minCoeff(), part.col(1).minCoeff(),
+                           part.col(0).maxCoeff(), part.col(1).maxCoeff()});
+    }
 }
 
 Eigen::Index Polyline::piece_of(double measure_m) const {
@@ -198,6 +214,28 @@ Eigen::Vector2d Polyline::at(double measure_m) const {
     const Eigen::Index k = piece_of(measure_m);
     const double w = (measure_m - m_measure(k)) / (m_measure(k + 1) - m_measure(k));
     return (m_xy.row(k) + w * (m_xy.row(k + 1) - m_xy.row(k))).matrix().transpose();
+}
+
+PointsXY Polyline::at_all(const Eigen::ArrayXd& measures_m) const {
+    PointsXY points(measures_m.size(), 2);
+    const double* measures = m_measure.data();
+    const Eigen::Index last = m_measure.size() - 2;
+    const auto fill = [&](const tbb::blocked_range<Eigen::Index>& part) {
+        Eigen::Index k = piece_of(measures_m(part.begin()));
+        for (Eigen::Index j = part.begin(); j < part.end(); ++j) {
+            const double s = measures_m(j);
+            if (!(s >= measures[k] || k == 0) || !(s < measures[k + 1] || k == last))
+                k = s >= measures[k + 1] && s < measures[std::min(k + 2, last + 1)] ? k + 1
+                                                                                    : piece_of(s);
+            const double w = (s - measures[k]) / (measures[k + 1] - measures[k]);
+            points(j, 0) = m_xy(k, 0) + w * (m_xy(k + 1, 0) - m_xy(k, 0));
+            points(j, 1) = m_xy(k, 1) + w * (m_xy(k + 1, 1) - m_xy(k, 1));
+        }
+    };
+    constexpr Eigen::Index enough_for_a_task = 20000;
+    tbb::parallel_for(tbb::blocked_range<Eigen::Index>{0, measures_m.size(), enough_for_a_task},
+                      fill);
+    return points;
 }
 
 double Polyline::height_at(double measure_m) const {
@@ -223,11 +261,17 @@ Nearest Polyline::on_piece(Eigen::Index k, double x, double y) const {
 }
 
 Nearest Polyline::nearest(double x, double y) const {
-    Nearest best = on_piece(0, x, y);
-    for (Eigen::Index k = 1; k + 1 < m_xy.rows(); ++k) {
-        const Nearest here = on_piece(k, x, y);
-        if (std::abs(here.offset_m) < std::abs(best.offset_m))
-            best = here;
+    Nearest best{0.0, std::numeric_limits<double>::infinity()};
+    for (const Box& box : m_boxes) {
+        const double off_x = std::max({box.west - x, 0.0, x - box.east});
+        const double off_y = std::max({box.south - y, 0.0, y - box.north});
+        if (off_x * off_x + off_y * off_y >= best.offset_m * best.offset_m)
+            continue; // nothing in the box can be nearer
+        for (Eigen::Index k = box.first_piece; k < box.end_piece; ++k) {
+            const Nearest here = on_piece(k, x, y);
+            if (std::abs(here.offset_m) < std::abs(best.offset_m))
+                best = here;
+        }
     }
     return best;
 }

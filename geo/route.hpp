@@ -45,6 +45,8 @@ public:
     const Eigen::ArrayXd& heights() const { return m_z; }
     /// Point at a measure; beyond the ends the first and last piece are prolonged.
     Eigen::Vector2d at(double measure_m) const;
+    /// The same for many measures, in any order; quick where neighbours follow each other.
+    PointsXY at_all(const Eigen::ArrayXd& measures_m) const;
     double height_at(double measure_m) const;
     /// Unit vector of travel.
     Eigen::Vector2d direction_at(double measure_m) const;
@@ -58,9 +60,16 @@ public:
 private:
     Eigen::Index piece_of(double measure_m) const;
     Nearest on_piece(Eigen::Index piece, double x, double y) const;
+    /// What neighbouring pieces keep within, so that a search can pass over them.
+    struct Box {
+        Eigen::Index first_piece, end_piece;
+        double west, south, east, north;
+    };
+    void box_pieces();
     PointsXY m_xy;
     Eigen::ArrayXd m_z;
     Eigen::ArrayXd m_measure;
+    std::vector<Box> m_boxes;
     bool m_along_slope = false;
 };
 

@@ -1,6 +1,8 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "stats/path_smoother.hpp"
 
+#include "stats/path_dense.hpp"
+
 #include <Eigen/LU>
 
 #include <algorithm>
@@ -159,6 +161,22 @@ PathEstimate smooth_path(const PathData& data, const PathPrior& prior, const Wal
     return out;
 }
 
+/// smooth_path averaged over walk sizes, at every query by itself.
+static PathEstimate averaged(const PathData& data, const PathPrior& prior,
+                             const std::vector<WeightedSize>& sizes, const Eigen::ArrayXd& query) {
+    PathEstimate out{Eigen::ArrayXd::Zero(query.size()), Eigen::ArrayXd::Zero(query.size()),
+                     Eigen::ArrayXd::Zero(query.size())};
+    std::vector<PathEstimate> parts;
+    for (const auto& node : sizes) {
+        parts.push_back(smooth_path(data, prior, node.size, query));
+        out.mean += node.weight * parts.back().mean;
+        out.rate += node.weight * parts.back().rate;
+    }
+    for (std::size_t k = 0; k < sizes.size(); ++k)
+        out.variance += sizes[k].weight * (parts[k].variance + (parts[k].mean - out.mean).square());
+    return out;
+}
+
 std::vector<WeightedSize> walk_sizes(const std::vector<PathData>& series, const PathPrior& prior) {
     std::vector<PathData> heads;
     for (const auto& data : series)
@@ -197,19 +215,13 @@ std::vector<WeightedSize> walk_sizes(const std::vector<PathData>& series, const 
 
 PathEstimate smooth_path(const PathData& data, const PathPrior& prior,
                          const std::vector<WeightedSize>& sizes, const Eigen::ArrayXd& query) {
-    PathEstimate out{Eigen::ArrayXd::Zero(query.size()), Eigen::ArrayXd::Zero(query.size()),
-                     Eigen::ArrayXd::Zero(query.size())};
-    std::vector<PathEstimate> parts;
-    for (const auto& node : sizes) {
-        parts.push_back(smooth_path(data, prior, node.size, query));
-        out.mean += node.weight * parts.back().mean;
-        out.rate += node.weight * parts.back().rate;
-    }
-    for (std::size_t k = 0; k < sizes.size(); ++k)
-        out.variance += sizes[k].weight * (parts[k].variance + (parts[k].mean - out.mean).square());
-    return out;
+    if (query.size() == 0)
+        return {};
+    const DensePath dense{data.at, query};
+    const PathEstimate few = averaged(data, prior, sizes, dense.nodes());
+    return {dense.at_queries(few.mean), dense.at_queries(few.variance).max(0.0),
+            dense.at_queries(few.rate)};
 }
-
 LeftOut leave_one_out(const PathData& data, const PathPrior& prior,
                       const std::vector<WeightedSize>& sizes) {
     LeftOut out{Eigen::ArrayXd::Zero(data.at.size()), Eigen::ArrayXd::Zero(data.at.size())};

@@ -73,3 +73,18 @@ TEST_CASE("leaving one out is what fitting the others gives", "[stats][property]
         CHECK(left.variance(i) == Approx(there.variance(0) + data.variance(i)).epsilon(1e-3));
     }
 }
+
+TEST_CASE("many places between observations are what each gives by itself", "[stats][property]") {
+    const stats::PathData data = some_data();
+    const auto sizes = stats::walk_sizes({data}, prior);
+    const Eigen::ArrayXd query = Eigen::ArrayXd::LinSpaced(3001, -20.0, 290.0);
+    const auto together = stats::smooth_path(data, prior, sizes, query);
+    for (const Eigen::Index q : {0, 1, 193, 194, 500, 774, 1451, 2000, 2719, 3000}) {
+        Eigen::ArrayXd first_and_this(2); // the belief in the rate holds at the first place
+        first_and_this << query(0), query(q);
+        const auto alone = stats::smooth_path(data, prior, sizes, first_and_this);
+        CHECK(together.mean(q) == Approx(alone.mean(1)).margin(1e-6));
+        CHECK(together.variance(q) == Approx(alone.variance(1)).margin(1e-6));
+        CHECK(together.rate(q) == Approx(alone.rate(1)).margin(1e-7));
+    }
+}
