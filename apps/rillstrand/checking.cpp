@@ -15,8 +15,6 @@ void refuse_unbuilt(const campaign::Campaign& campaign, Problems& problems) {
         problems.add(campaign.place(where) + ": " + what +
                      " is not built yet; take it out of the campaign file for now");
     };
-    for (const auto& snow : campaign.snows)
-        refuse(snow.where, "[[snow]]");
     for (const auto& column : campaign.columns)
         refuse(column.where, "[[column]]");
     for (const auto& bed : campaign.beds)

@@ -3,6 +3,7 @@
 
 #include "cautions.hpp"
 #include "sha256.hpp"
+#include "snow_tables.hpp"
 
 #include "base/text.hpp"
 
@@ -196,6 +197,8 @@ std::set<std::filesystem::path> inputs_of(const Session& session) {
         for (const auto& known : s.known)
             add_series(known.temperature);
     }
+    for (const auto& s : c.snows)
+        add_series(s.air);
     add(c.page_background);
     return files;
 }
@@ -233,7 +236,7 @@ Json findings_json(const Session& session, const Tables& tables, const std::stri
             {"quality", quality_json(session, tables)},
             {"placement", placement_json(session, tables)},
             {"stream", stream_json(session, tables)},
-            {"snow", Json::array()},
+            {"snow", snow_json(session)},
             {"column", Json::array()},
             {"bed", Json::array()},
             {"warnings", warnings_json(session.warnings)},

@@ -3,6 +3,7 @@
 
 #include "corridor.hpp"
 #include "layers.hpp"
+#include "snow_tables.hpp"
 
 #include "base/text.hpp"
 
@@ -371,6 +372,15 @@ Tables make_tables(const Session& session) {
         tables.all.push_back(inflows_table(session, positions));
         tables.all.push_back(stream_channels_table(session, positions));
     }
+    if (!session.snows.empty()) {
+        Table channels = snow_channels_table(session);
+        positions.append(channels, channels.find("fibre_m")->real);
+        tables.all.push_back(std::move(channels));
+        tables.all.push_back(snow_daily_table(session));
+        tables.all.push_back(snow_cover_table(session));
+        if (Table classes = snow_classes_table(session); classes.rows() > 0)
+            tables.all.push_back(std::move(classes));
+    }
     if (!session.baths.empty())
         tables.all.push_back(baths_table(session));
     return tables;
@@ -393,6 +403,13 @@ void write_all_layers(const Session& session, const Tables& tables, const Json& 
     set.now = now;
     for (const auto& table : tables.all)
         set.layers.push_back(as_layer(table, session));
+    if (!session.snows.empty()) {
+        geo::Look look;
+        look.colour_by = "probability";
+        look.time_by = "date";
+        set.views.push_back(
+            {"snow_daily_map", "Snow day by day", "snow_daily", "snow_channels", "fibre_m", look});
+    }
     geo::write_layers(set, c.layers.formats, output.staging());
     if (!c.layers.corridor_m)
         return;
@@ -430,6 +447,7 @@ void tell_findings(const Session& session, std::ostream& out) {
             out << ", position sd " << text::fixed(placed[placed.size() / 2], 1) << " m (median)";
         out << ", slack " << text::fixed(session.placement->slack_mean, 3) << '\n';
     }
+    tell_snow(session, out);
     for (const auto& reach : session.streams) {
         out << "stream '" << reach.stretch << "': " << reach.inflows.size() << " found";
         if (std::isfinite(reach.detection_limit_median))

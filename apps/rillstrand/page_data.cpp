@@ -3,6 +3,7 @@
 
 #include "background.hpp"
 #include "page.hpp"
+#include "snow_tables.hpp"
 
 #include "base/text.hpp"
 
@@ -170,6 +171,8 @@ std::string page_of(const Session& session, const Tables& tables, const Json& fi
     Json data = channels_json(session);
     data["findings"] = findings;
     data["picture"] = PictureBuilder{*session.source}.build();
+    if (!session.snows.empty())
+        data["snows"] = snow_page_json(session);
     if (session.campaign.page_background && session.placement)
         data["background"] = background_json(session);
     if (const Table* inflows = tables.find("inflows"))

@@ -4,6 +4,7 @@
 #include "findings_json.hpp"
 #include "layer_tables.hpp"
 #include "page_data.hpp"
+#include "snow_stage.hpp"
 
 #include "base/text.hpp"
 #include "record/bin.hpp"
@@ -309,6 +310,7 @@ void run_all(const std::filesystem::path& campaign_file, const Context& context)
     assess_stage(session, context);
     place_stage(session, context);
     stream_stage(session, context);
+    snow_stage(session, context);
 
     context.progress.stage("writing results", 0.0, "");
     const Tables tables = make_tables(session);

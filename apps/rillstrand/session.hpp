@@ -10,6 +10,7 @@
 #include "record/gather.hpp"
 #include "record/scan.hpp"
 #include "record/source.hpp"
+#include "snow/snow.hpp"
 #include "stream/stream.hpp"
 
 #include <memory>
@@ -39,6 +40,7 @@ struct Session {
     std::optional<quality::LegComparison> legs; ///< with a turnaround
     ChannelNames names;
     std::vector<stream::StreamFindings> streams;
+    std::vector<snow::SnowFindings> snows;
     Warnings warnings;
 
     const record::Axes& axes() const { return record_axes; }

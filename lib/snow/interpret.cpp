@@ -99,7 +99,7 @@ void decide_states(SnowFindings& f) {
             const bool seen = std::isfinite(f.days.mean_degC(d, j));
             const double doubt = seen ? 0.08 : 0.3;
             State state = p > 0.5 ? State::snow : State::bare;
-            if (std::abs(p - 0.5) < doubt)
+            if (std::isnan(p) || std::abs(p - 0.5) < doubt)
                 state = State::unknown;
             f.state(d, j) = state;
             Condition condition = Condition::unknown;
@@ -121,13 +121,13 @@ void add_insulation(SnowFindings& f, const ModelResult& model) {
     c.insulation_index = c.depth_at_least_m = c.depth_at_least_dense_m =
         Eigen::ArrayXd::Constant(places, nan);
     for (Eigen::Index j = 0; j < places; ++j) {
-        const double snow = f.probability.col(j).sum();
+        const double snow = f.probability.col(j).sum(); // NaN: no sample
         const double bare = static_cast<double>(f.days.n_day()) - snow;
-        if (snow < 5.0) {
+        if (!(snow >= 5.0)) {
             c.under_snow_degC(j) = nan;
             continue;
         }
-        if (bare < 5.0)
+        if (!(bare >= 5.0))
             continue;
         c.insulation_index(j) = model.snow_share(j) / model.bare_share(j);
         double least = std::numeric_limits<double>::infinity(), most = 0.0;
@@ -235,6 +235,9 @@ SnowFindings interpret(const SnowInput& input) {
         model = run_model(sharp, m);
     }
     f.probability = model.probability;
+    for (Eigen::Index j = 0; j < f.probability.cols(); ++j)
+        if (!f.days.mean_degC.col(j).isFinite().any())
+            f.probability.col(j).setConstant(nan);
     f.forcing_K = model.forcing_K;
     f.forcing_log_sd = model.forcing_log_sd;
     decide_states(f);

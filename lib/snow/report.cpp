@@ -111,6 +111,10 @@ SnowChannels find_channels(const Eigen::ArrayXd& fibre_m,
         const Cover cover = longest_cover(covered);
         c.spells[k] = cover.spells;
         c.covered_days(j) = static_cast<double>(std::count(covered.begin(), covered.end(), true));
+        if (n > 0 && std::isnan(probability(0, j))) { // a channel without any sample
+            c.covered_days(j) = c.covered_days_sd(j) = c.mean_probability(j) = nan;
+            continue;
+        }
         const Eigen::ArrayXd spread = probability.col(j) * (1.0 - probability.col(j));
         // Uncertain days come in spells, so their errors add rather than cancel.
         c.covered_days_sd(j) = std::sqrt(3.0 * spread.sum());
@@ -137,6 +141,8 @@ SnowCover find_cover(const Days& days, const Eigen::ArrayXXd& probability,
         bool seen = false;
         const auto add = [&](Eigen::Index j) {
             const double p = probability(d, j);
+            if (std::isnan(p))
+                return;
             sum += p;
             spread += p * (1.0 - p);
             channels += 1.0;
@@ -148,7 +154,7 @@ SnowCover find_cover(const Days& days, const Eigen::ArrayXXd& probability,
         else
             for (const Eigen::Index j : which)
                 add(j);
-        if (!seen)
+        if (!seen || channels == 0.0)
             continue;
         cover.covered_fraction(d) = sum / channels;
         cover.covered_fraction_sd(d) =

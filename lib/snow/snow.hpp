@@ -77,7 +77,8 @@ struct SnowFindings {
     std::string stretch;
     campaign::SnowMethod method = campaign::SnowMethod::model;
     Days days;
-    /// Of snow on more than half of the day, by the model; row = day, column = channel.
+    /// Of snow on more than half of the day, by the model; row = day, column = channel; NaN where
+    /// the channel has no sample at all.
     Eigen::ArrayXXd probability;
     Eigen::Array<State, Eigen::Dynamic, Eigen::Dynamic> state; ///< by the method asked for
     /// By the user's thresholds; size 0 where they were not said.

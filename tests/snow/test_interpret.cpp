@@ -54,7 +54,11 @@ TEST_CASE("a channel without any sample does not disturb the others", "[snow]") 
     auto input = input_of(h, setup, false);
     input.temperature_degC.col(4).setConstant(std::numeric_limits<float>::quiet_NaN());
     const auto f = snow::interpret(input);
-    CHECK(f.probability.isFinite().all());
+    CHECK(f.probability.leftCols(4).isFinite().all());
+    CHECK(f.probability.rightCols(7).isFinite().all());
+    CHECK(f.probability.col(4).isNaN().all());
+    CHECK((f.state.col(4) == snow::State::unknown).all());
+    CHECK(std::isnan(f.channels.covered_days(4)));
     CHECK(std::isfinite(f.cover.covered_fraction(3)));
 }
 
