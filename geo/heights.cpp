@@ -2,9 +2,7 @@
 #include "heights.hpp"
 
 #include <algorithm>
-#include <cmath>
 #include <limits>
-#include <numbers>
 
 namespace rillstrand::geo {
 
@@ -19,10 +17,6 @@ double height_between(const std::vector<std::pair<double, double>>& known, doubl
     const auto before = next - 1;
     const double w = (path_m - before->first) / (next->first - before->first);
     return before->second + w * (next->second - before->second);
-}
-
-double winding_depth_m(double along_fibre_m, double diameter_m, double pitch_m) {
-    return along_fibre_m * pitch_m / std::hypot(std::numbers::pi * diameter_m, pitch_m);
 }
 
 } // namespace rillstrand::geo

@@ -9,6 +9,7 @@
 #include "heights.hpp"
 #include "mark.hpp"
 #include "raster_sample.hpp"
+#include "record/winding.hpp"
 #include "route.hpp"
 #include "survey.hpp"
 #include "tie_checks.hpp"
@@ -356,11 +357,8 @@ private:
                 c.reason[static_cast<std::size_t>(j)] = NoPosition::placed;
             }
             const double datum_z = elevation_m.value_or(c.z(j));
-            const double down = direction == campaign::Direction::down ? 1.0 : -1.0;
-            const double along_m = down * (m_distance_m(j) - datum_m);
             c.z(j) =
-                datum_z - (winding ? winding_depth_m(along_m, winding->diameter_m, winding->pitch_m)
-                                   : along_m);
+                datum_z - record::depth_below_datum_m(m_distance_m(j), datum_m, direction, winding);
         }
     }
 

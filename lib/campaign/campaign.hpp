@@ -220,6 +220,7 @@ struct Column {
     std::optional<SideSeries> water_level;
     std::optional<std::filesystem::path> hypsograph;
     std::optional<SideSeries> wind;
+    double wind_height_m = 10.0; ///< of the anemometer over the water
     double salinity_gkg = 0.0;
     Where where;
 };

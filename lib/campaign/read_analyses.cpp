@@ -179,6 +179,9 @@ void read_columns(TableReader& root, Campaign& campaign) {
             in.require("datum_elevation_m", "the elevation of the datum, since a level is given");
         in.path("hypsograph", out.hypsograph);
         in.series("wind", out.wind);
+        in.real("wind_height_m", out.wind_height_m, {0.5, 100.0, false});
+        if (out.wind)
+            in.used_default("wind_height_m", "10");
         in.real("salinity_gkg", out.salinity_gkg, {0.0, 42.0, false});
         in.used_default("salinity_gkg", "0");
         campaign.columns.push_back(out);
