@@ -146,11 +146,12 @@ Readings ReadingMaker::at(Eigen::Index i_time, int& in_air) const {
     }
     const double air_degC = median(air);
     for (std::size_t k = 0; k < depth.size(); ++k) {
-        const double share = share_in_air(depth[k], m_kernel_m);
-        if (!std::isnan(air_degC) && share > 1e-4) {
+        // A box has no air in it where a Gaussian still has some: half the correction is made and
+        // half of it is doubtful.
+        const double share = 0.5 * share_in_air(depth[k], m_kernel_m);
+        if (!std::isnan(air_degC) && share > 1e-5) {
             value[k] = (value[k] - share * air_degC) / (1.0 - share);
-            // A fifth of the correction is doubtful: the kernel's form is not known better.
-            sd[k] = std::hypot(sd[k], 0.2 * share * (air_degC - value[k]));
+            sd[k] = std::hypot(sd[k], share * (air_degC - value[k]));
         }
         sd[k] = std::max(sd[k], least_noise_K);
     }
