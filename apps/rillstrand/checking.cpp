@@ -1,6 +1,8 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "pipeline.hpp"
 
+#include "column_stage.hpp"
+
 #include "base/text.hpp"
 #include "campaign/read.hpp"
 #include "store/gather.hpp"
@@ -15,8 +17,6 @@ void refuse_unbuilt(const campaign::Campaign& campaign, Problems& problems) {
         problems.add(campaign.place(where) + ": " + what +
                      " is not built yet; take it out of the campaign file for now");
     };
-    for (const auto& column : campaign.columns)
-        refuse(column.where, "[[column]]");
     for (const auto& bed : campaign.beds)
         refuse(bed.where, "[[bed]]");
     if (campaign.adjust)
@@ -62,6 +62,7 @@ campaign::Campaign checked_campaign(const std::filesystem::path& file) {
     Problems problems;
     refuse_unbuilt(campaign, problems);
     check_needs(campaign, problems);
+    check_columns(campaign, problems);
     try {
         check_places(campaign, store::inspect(campaign), problems);
     } catch (const DataError& error) {

@@ -2,6 +2,7 @@
 #include "findings_json.hpp"
 
 #include "cautions.hpp"
+#include "column_stage.hpp"
 #include "sha256.hpp"
 #include "snow_tables.hpp"
 
@@ -199,6 +200,11 @@ std::set<std::filesystem::path> inputs_of(const Session& session) {
     }
     for (const auto& s : c.snows)
         add_series(s.air);
+    for (const auto& column : c.columns) {
+        add_series(column.water_level);
+        add_series(column.wind);
+        add(column.hypsograph);
+    }
     add(c.page_background);
     return files;
 }
@@ -237,7 +243,7 @@ Json findings_json(const Session& session, const Tables& tables, const std::stri
             {"placement", placement_json(session, tables)},
             {"stream", stream_json(session, tables)},
             {"snow", snow_json(session)},
-            {"column", Json::array()},
+            {"column", column_json(session, tables)},
             {"bed", Json::array()},
             {"warnings", warnings_json(session.warnings)},
             {"cautions", cautions_for(c)},

@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "layer_tables.hpp"
 
+#include "column_stage.hpp"
 #include "corridor.hpp"
 #include "layers.hpp"
 #include "snow_tables.hpp"
@@ -334,7 +335,8 @@ geo::Layer as_layer(const Table& table, const Session& session) {
     if (x == nullptr)
         return geo::table_layer(table);
     const Column* z = table.find("z");
-    const bool has_z = table.name() == "channels" || table.name() == "tie_points";
+    const bool has_z = table.name() == "channels" || table.name() == "tie_points" ||
+                       table.name().ends_with("_profiles");
     geo::Layer layer =
         geo::point_layer(table, has_z ? geo::GeometryKind::point_z : geo::GeometryKind::point,
                          x->real, table.find("y")->real, has_z && z != nullptr ? z->real : Reals{});
@@ -381,6 +383,7 @@ Tables make_tables(const Session& session) {
         if (Table classes = snow_classes_table(session); classes.rows() > 0)
             tables.all.push_back(std::move(classes));
     }
+    add_column_tables(session, tables);
     if (!session.baths.empty())
         tables.all.push_back(baths_table(session));
     return tables;
@@ -448,6 +451,7 @@ void tell_findings(const Session& session, std::ostream& out) {
         out << ", slack " << text::fixed(session.placement->slack_mean, 3) << '\n';
     }
     tell_snow(session, out);
+    tell_columns(session, out);
     for (const auto& reach : session.streams) {
         out << "stream '" << reach.stretch << "': " << reach.inflows.size() << " found";
         if (std::isfinite(reach.detection_limit_median))

@@ -2,6 +2,7 @@
 #include "page_data.hpp"
 
 #include "background.hpp"
+#include "column_stage.hpp"
 #include "page.hpp"
 #include "snow_tables.hpp"
 
@@ -177,6 +178,8 @@ std::string page_of(const Session& session, const Tables& tables, const Json& fi
         data["background"] = background_json(session);
     if (const Table* inflows = tables.find("inflows"))
         data["inflows"] = rows_json(*inflows);
+    if (!session.columns.empty())
+        data["columns"] = column_pictures(session);
     if (const Table* ties = tables.find("tie_points"))
         data["tie_points"] = rows_json(*ties);
     return page::render(session.campaign.name,

@@ -5,6 +5,7 @@
 
 #include "base/error.hpp"
 #include "campaign/campaign.hpp"
+#include "column/column.hpp"
 #include "quality/baths.hpp"
 #include "quality/legs.hpp"
 #include "record/gather.hpp"
@@ -41,6 +42,7 @@ struct Session {
     ChannelNames names;
     std::vector<stream::StreamFindings> streams;
     std::vector<snow::SnowFindings> snows;
+    std::vector<column::ColumnFindings> columns;
     Warnings warnings;
 
     const record::Axes& axes() const { return record_axes; }

@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 // What was found and how sure it is, in words and tables; panels without data are absent.
 import { chart } from './charts';
+import { columns } from './column';
 import { data, el, findings, isolated, list, metres, moveTo, num, percent, pm, Row } from './data';
 import { facts, folded, panel, sentence, table, texts } from './parts';
 import { placement } from './placement';
@@ -67,11 +68,7 @@ export function others(): HTMLElement[] {
         out.push(panel('h-snow' + n, `Snow: ${isolated(s.stretch)}`, list(s.cover).length > 0 && banded('h-cover' + n, 'Covered share of the line', list(s.cover), 'date', 'covered_fraction', 'covered_fraction_sd', '%', 100),
             c.length > 0 && chart({ id: 'h-melt' + n, title: 'Days under snow along the line', x: numbers(c, 'fibre_m') as number[], unit: 'days', link: 'fibre', lines: [{ label: 'covered days', values: numbers(c, 'covered_days') }] })));
     });
-    list(findings.column).forEach((s, n) => {
-        const r = list(s.series);
-        out.push(panel('h-column' + n, `Water column: ${isolated(s.name)}`, r.length > 0 && banded('h-thermo' + n, 'Thermocline depth', r, 'time', 'thermocline_depth_m', 'thermocline_depth_sd_m', 'm'),
-            r.length > 0 && chart({ id: 'h-schmidt' + n, title: 'Schmidt stability', x: seconds(r, 'time'), unit: 'J/m\u00b2', time: true, link: 'time', lines: [{ label: 'stability', values: numbers(r, 'schmidt_stability_jm2') }] })));
-    });
+    out.push(...columns());
     list(findings.bed).forEach((s, n) => { const r = list(s.series); out.push(panel('h-bed' + n, `Streambed: ${isolated(s.name)}`, r.length > 0 && banded('h-flux' + n, 'Flux of water, positive down', r, 'time', 'flux_ms', 'flux_sd_ms', 'm/day', 86400))); });
     return out;
 }
