@@ -88,7 +88,7 @@ Scores score(const simulated::Lake& lake, const simulated::Cable& cable, int see
 TEST_CASE("a summer lake with a seiche, on a hanging cable", "[column][property]") {
     simulated::Lake lake;
     lake.wave_m = 1.0;
-    lake.day_warming_K = 2.0;
+    lake.day_warming_K = 0.4;
     lake.level_change_m = 0.2;
     const Scores s = score(lake, {}, 2, 2.0);
     CHECK(s.thermocline.rms() < 0.15);
