@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "pipeline.hpp"
 
+#include "bed_stage.hpp"
 #include "column_stage.hpp"
 
 #include "base/text.hpp"
@@ -17,8 +18,6 @@ void refuse_unbuilt(const campaign::Campaign& campaign, Problems& problems) {
         problems.add(campaign.place(where) + ": " + what +
                      " is not built yet; take it out of the campaign file for now");
     };
-    for (const auto& bed : campaign.beds)
-        refuse(bed.where, "[[bed]]");
     if (campaign.adjust)
         refuse(campaign.adjust->where, "[adjust]");
 }
@@ -64,7 +63,9 @@ campaign::Campaign checked_campaign(const std::filesystem::path& file) {
     check_needs(campaign, problems);
     check_columns(campaign, problems);
     try {
-        check_places(campaign, store::inspect(campaign), problems);
+        const record::Inspection heads = store::inspect(campaign);
+        check_places(campaign, heads, problems);
+        check_beds(campaign, heads.distance_m, problems);
     } catch (const DataError& error) {
         problems.add(error);
     }

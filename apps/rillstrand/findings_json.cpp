@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "findings_json.hpp"
 
+#include "bed_tables.hpp"
 #include "cautions.hpp"
 #include "column_stage.hpp"
 #include "sha256.hpp"
@@ -244,7 +245,7 @@ Json findings_json(const Session& session, const Tables& tables, const std::stri
             {"stream", stream_json(session, tables)},
             {"snow", snow_json(session)},
             {"column", column_json(session, tables)},
-            {"bed", Json::array()},
+            {"bed", bed_json(session)},
             {"warnings", warnings_json(session.warnings)},
             {"cautions", cautions_for(c)},
             {"provenance", provenance_json(session, now)}};

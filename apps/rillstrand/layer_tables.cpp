@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "layer_tables.hpp"
 
+#include "bed_tables.hpp"
 #include "column_stage.hpp"
 #include "corridor.hpp"
 #include "layers.hpp"
@@ -384,6 +385,8 @@ Tables make_tables(const Session& session) {
             tables.all.push_back(std::move(classes));
     }
     add_column_tables(session, tables);
+    for (Table& table : bed_tables(session))
+        tables.all.push_back(std::move(table));
     if (!session.baths.empty())
         tables.all.push_back(baths_table(session));
     return tables;
@@ -452,6 +455,7 @@ void tell_findings(const Session& session, std::ostream& out) {
     }
     tell_snow(session, out);
     tell_columns(session, out);
+    tell_beds(session, out);
     for (const auto& reach : session.streams) {
         out << "stream '" << reach.stretch << "': " << reach.inflows.size() << " found";
         if (std::isfinite(reach.detection_limit_median))

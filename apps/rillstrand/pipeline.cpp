@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "pipeline.hpp"
 
+#include "bed_stage.hpp"
 #include "column_stage.hpp"
 #include "findings_json.hpp"
 #include "layer_tables.hpp"
@@ -313,6 +314,7 @@ void run_all(const std::filesystem::path& campaign_file, const Context& context)
     stream_stage(session, context);
     snow_stage(session, context);
     column_stage(session, context);
+    bed_stage(session, context);
 
     context.progress.stage("writing results", 0.0, "");
     const Tables tables = make_tables(session);

@@ -4,6 +4,7 @@
 #include "placement.hpp"
 
 #include "base/error.hpp"
+#include "bed/bed.hpp"
 #include "campaign/campaign.hpp"
 #include "column/column.hpp"
 #include "quality/baths.hpp"
@@ -43,6 +44,7 @@ struct Session {
     std::vector<stream::StreamFindings> streams;
     std::vector<snow::SnowFindings> snows;
     std::vector<column::ColumnFindings> columns;
+    std::vector<bed::BedFindings> beds;
     Warnings warnings;
 
     const record::Axes& axes() const { return record_axes; }

@@ -1,5 +1,6 @@
 // SPDX-License-Identifier: Apache-2.0
 // What was found and how sure it is, in words and tables; panels without data are absent.
+import { bed } from './bed';
 import { chart } from './charts';
 import { columns } from './column';
 import { data, el, findings, isolated, list, metres, moveTo, num, percent, pm, Row } from './data';
@@ -16,7 +17,7 @@ export function header(): HTMLElement[] {
     }
     for (const s of list(findings.snow)) card('Snow', `${isolated(s.stretch)} \u00b7 ${list(s.channels).length} channels, ${list(s.cover).length} days`);
     for (const s of list(findings.column)) card('Water column', isolated(s.name));
-    for (const s of list(findings.bed)) card('Streambed', isolated(s.name));
+    for (const s of list(findings.bed)) card(s.flux_md == null ? 'Streambed' : pm(s.flux_md, s.flux_sd_md, 3, 'm/day'), `${isolated(s.name)} \u00b7 mean flux through the bed, positive down`);
     if (findings.placement) card('\u00b1\u202f' + metres(findings.placement.position_sd_m), 'position, middle channel (1 sd)');
     card('\u00b1\u202f' + num(findings.quality?.noise_c, 3, '\u00b0C'), 'noise, middle channel (1 sd)');
     const when = r.first ? `${String(r.first).slice(0, 16).replace('T', ' ')} to ${String(r.last).slice(0, 16).replace('T', ' ')} UTC \u00b7 ${r.traces} traces \u00d7 ${r.channels} channels` : '';
@@ -69,7 +70,7 @@ export function others(): HTMLElement[] {
             c.length > 0 && chart({ id: 'h-melt' + n, title: 'Days under snow along the line', x: numbers(c, 'fibre_m') as number[], unit: 'days', link: 'fibre', lines: [{ label: 'covered days', values: numbers(c, 'covered_days') }] })));
     });
     out.push(...columns());
-    list(findings.bed).forEach((s, n) => { const r = list(s.series); out.push(panel('h-bed' + n, `Streambed: ${isolated(s.name)}`, r.length > 0 && banded('h-flux' + n, 'Flux of water, positive down', r, 'time', 'flux_ms', 'flux_sd_ms', 'm/day', 86400))); });
+    list(findings.bed).forEach((b, n) => out.push(bed(b, n)));
     return out;
 }
 
