@@ -3,6 +3,7 @@
 
 #include "command_check.hpp"
 #include "command_draft.hpp"
+#include "command_plan.hpp"
 #include "command_run.hpp"
 #include "command_stages.hpp"
 
@@ -13,6 +14,7 @@ void add_commands(CLI::App& app, Job& job) {
     add_check(app, job);
     add_run(app, job);
     add_stages(app, job);
+    add_plan(app, job);
 }
 
 } // namespace rillstrand::app
