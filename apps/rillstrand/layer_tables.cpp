@@ -430,6 +430,12 @@ void write_all_layers(const Session& session, const Tables& tables, const Json& 
     corridor.corridor_m = *c.layers.corridor_m;
     corridor.now = now;
     geo::write_corridor(corridor, output.staging() / "layers" / "mean_temperature.tif");
+    for (const SnowRaster& raster : snow_rasters(session)) {
+        corridor.title = raster.title;
+        corridor.unit = raster.unit;
+        corridor.value = raster.value;
+        geo::write_corridor(corridor, output.staging() / "layers" / raster.file);
+    }
 }
 
 void tell_findings(const Session& session, std::ostream& out) {

@@ -193,6 +193,29 @@ Table snow_classes_table(const Session& session) {
     return table;
 }
 
+std::vector<SnowRaster> snow_rasters(const Session& session) {
+    if (session.snows.empty())
+        return {};
+    const record::Axes& axes = session.axes();
+    const Reals missing(static_cast<std::size_t>(axes.n_place()),
+                        std::numeric_limits<double>::quiet_NaN());
+    const double from_s = session.snows.front().days.first_s(0);
+    SnowRaster probability{"Mean probability of snow", "1", "snow_probability.tif", missing};
+    SnowRaster melt_out{"Melt-out", "days since " + session.snows.front().days.date.front(),
+                        "snow_melt_out.tif", missing};
+    for (const auto& f : session.snows)
+        for (Eigen::Index j = 0; j < f.channels.fibre_m.size(); ++j) {
+            const auto range =
+                record::places_between(axes, f.channels.fibre_m(j), f.channels.fibre_m(j));
+            const auto at = static_cast<std::size_t>(range.first);
+            const int day = f.channels.melt_out[static_cast<std::size_t>(j)];
+            probability.value[at] = f.channels.mean_probability(j);
+            if (day >= 0)
+                melt_out.value[at] = std::round((f.days.first_s(day) - from_s) / 86400.0);
+        }
+    return {probability, melt_out};
+}
+
 Json snow_json(const Session& session) {
     Json list = Json::array();
     const Table channels = snow_channels_table(session), cover = snow_cover_table(session);

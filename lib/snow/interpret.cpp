@@ -8,6 +8,7 @@
 #include "base/text.hpp"
 
 #include <algorithm>
+#include <array>
 #include <cmath>
 #include <limits>
 #include <numbers>
@@ -89,6 +90,46 @@ void add_air(const SnowInput& input, const Days& days, ModelInput& model) {
         }
 }
 
+/// Starts that lead to different answers where a whole line goes quiet at once: leaning to neither,
+/// to snow and to bare, and one that trusts the channels' common forcing.
+struct Start {
+    double lean, message_channels;
+};
+constexpr std::array<Start, 4> coherent_starts{{{0.0, 1.0}, {1.5, 1.0}, {-1.0, 1.0}, {0.0, 4.0}}};
+
+/// Where the record allows several coherent answers, their mean, and how far the covered share
+/// differs between them.
+ModelResult run_models(const Days& days, ModelInput input, Eigen::ArrayXd& between) {
+    ModelResult mean;
+    Eigen::ArrayXXd sum;
+    Eigen::ArrayXd share, square;
+    double n = 0.0;
+    for (const auto& [lean, channels] : coherent_starts) {
+        input.lean = lean;
+        input.message_channels = channels;
+        ModelResult one = run_model(days, input);
+        const Eigen::ArrayXd own = one.probability.rowwise().mean();
+        if (n == 0.0) {
+            sum = Eigen::ArrayXXd::Zero(one.probability.rows(), one.probability.cols());
+            share = square = Eigen::ArrayXd::Zero(own.size());
+            mean = one;
+        }
+        sum += one.probability;
+        share += own;
+        square += own * own;
+        n += 1.0;
+    }
+    mean.probability = sum / n;
+    between = (square / n - (share / n).square()).max(0.0).sqrt();
+    return mean;
+}
+
+/// Adds to a share's sd what the coherent answers differ by.
+void widen(SnowCover& cover, const Eigen::ArrayXd& between) {
+    cover.covered_fraction_sd =
+        (cover.covered_fraction_sd.square() + 1.5 * between.square()).sqrt();
+}
+
 void decide_states(SnowFindings& f) {
     const Eigen::Index n = f.days.n_day(), places = f.probability.cols();
     f.state.resize(n, places);
@@ -150,6 +191,8 @@ void add_classes(const SnowInput& input, SnowFindings& f) {
         if (!which.empty())
             f.classes.push_back({kind, label, static_cast<Eigen::Index>(which.size()),
                                  find_cover(f.days, f.probability, which)});
+        if (!which.empty())
+            widen(f.classes.back().cover, f.between);
     };
     const auto select = [](const Eigen::ArrayXd& values, double low, double high) {
         std::vector<Eigen::Index> which;
@@ -229,11 +272,12 @@ SnowFindings interpret(const SnowInput& input) {
     add_air(input, f.days, m);
     ModelResult model = run_model(f.days, m);
     f.leak = find_leak(input, f.days, model.probability);
-    if (f.leak > 0.05) {
-        const Days sharp = make_days(input.time_s, input.bin_s, sharpened(input, f.leak), offset_s,
-                                     input.zero_offset_K);
-        model = run_model(sharp, m);
-    }
+    if (f.leak > 0.05)
+        model = run_models(make_days(input.time_s, input.bin_s, sharpened(input, f.leak), offset_s,
+                                     input.zero_offset_K),
+                           m, f.between);
+    else
+        model = run_models(f.days, m, f.between);
     f.probability = model.probability;
     for (Eigen::Index j = 0; j < f.probability.cols(); ++j)
         if (!f.days.mean_degC.col(j).isFinite().any())
@@ -262,8 +306,12 @@ SnowFindings interpret(const SnowInput& input) {
     if (f.method == campaign::SnowMethod::threshold)
         share = (f.state == State::snow).cast<double>();
     f.cover = find_cover(f.days, share);
-    if (f.method == campaign::SnowMethod::threshold) // a rule has no probability: the model's sd
-        f.cover.covered_fraction_sd = find_cover(f.days, f.probability).covered_fraction_sd;
+    widen(f.cover, f.between);
+    if (f.method == campaign::SnowMethod::threshold) { // a rule has no probability: the model's sd
+        SnowCover modelled = find_cover(f.days, f.probability);
+        widen(modelled, f.between);
+        f.cover.covered_fraction_sd = modelled.covered_fraction_sd;
+    }
     add_classes(input, f);
     add_cautions(f);
     return f;

@@ -27,8 +27,9 @@ struct Tuning {
     double rate_strength = 3.0; ///< channel-days that the usual rates weigh
     double shared_channels = 6.0;
     double coupling = 0.1;
-    double message_channels = 1.0;
-    double final_temper = 0.9;
+    double final_temper = 0.85;
+    double bare_spread = 0.5, snow_spread = 0.5;
+    double trust_least = 0.2, change_floor = 0.7;
 };
 constexpr Tuning tuning;
 
@@ -300,6 +301,15 @@ private:
         return g;
     }
 
+    /// What others' bare ground is worth as a reference: less on days on which its swing does not
+    /// show that it is bare.
+    double ground_trust(Eigen::Index d) const {
+        if (m_level_posterior.rows() == 0)
+            return 1.0;
+        const double shown = m_level_posterior.row(d).tail(3).sum();
+        return tuning.trust_least + (1.0 - tuning.trust_least) * shown;
+    }
+
     /// Log densities of the day's means under bare ground (per level) and under snow.
     void add_means(Eigen::Index d, Eigen::Index j, Eigen::Ref<Eigen::ArrayXd> bare,
                    double& snow) const {
@@ -309,12 +319,13 @@ private:
         const Ground g = ground(d, j);
         double weight = tuning.blind_mean_weight;
         if (std::isfinite(g.mean_degC)) {
-            weight = tuning.mean_weight;
+            weight = tuning.mean_weight * ground_trust(d);
             const double trust = std::min(1.0, g.mean_weight / 3.0);
             double level = log_t(mean - g.mean_degC, 2.0 + 3.0 * (1.0 - trust));
             if (std::isfinite(change) && std::isfinite(g.change_K))
-                level = log_sum(level, log_t(change - g.change_K,
-                                             0.5 + 0.25 * std::abs(g.change_K) + (1.0 - trust))) -
+                level = log_sum(level, log_t(change - g.change_K, tuning.change_floor +
+                                                                      0.25 * std::abs(g.change_K) +
+                                                                      (1.0 - trust))) -
                         std::log(2.0);
             bare.setConstant(level);
         } else if (has_air() && std::isfinite(m_air_slow(d))) {
@@ -366,8 +377,8 @@ private:
             cavity -= own;
         Eigen::ArrayXXd next_own = Eigen::ArrayXXd::Zero(m_n, n_level);
         const double share = std::exp(c.log_bare), snow_share = std::exp(c.log_snow);
-        const double bare_spread = std::hypot(0.45, c.log_bare_sd);
-        const double snow_spread = std::hypot(0.7, c.log_snow_sd);
+        const double bare_spread = std::hypot(tuning.bare_spread, c.log_bare_sd);
+        const double snow_spread = std::hypot(tuning.snow_spread, c.log_snow_sd);
         for (Eigen::Index d = 0; d < m_n; ++d) {
             Eigen::ArrayXd bare = Eigen::ArrayXd::Zero(n_level), means = bare;
             Eigen::ArrayXd snow = Eigen::ArrayXd::Zero(n_level);
@@ -387,7 +398,7 @@ private:
                 const double p = std::clamp(m_bare(d, j), 0.02, 0.98);
                 for (Eigen::Index l = 0; l < n_level; ++l)
                     next_own(d, l) = log_sum(std::log(p) + bare(l), std::log(1.0 - p) + snow(l));
-                double snow_mean = -over_cap(d, j);
+                double snow_mean = (m_round < 4 ? m_input.lean : 0.0) - over_cap(d, j);
                 add_means(d, j, means, snow_mean);
                 bare += means;
                 snow += snow_mean;
@@ -408,7 +419,7 @@ private:
 
     void sweep() {
         Eigen::ArrayXXd p_bare(m_n, m_places);
-        m_level_posterior = Eigen::ArrayXXd::Zero(m_n, n_level);
+        Eigen::ArrayXXd levels = Eigen::ArrayXXd::Zero(m_n, n_level);
         Eigen::ArrayXd onset = Eigen::ArrayXd::Zero(m_n), melt = onset, from_bare = onset,
                        from_snow = onset;
         Eigen::MatrixXd step(2 * n_level, 2 * n_level);
@@ -429,7 +440,7 @@ private:
             chain.log_emission = emissions(j);
             const stats::Smoothed s = stats::smooth(chain);
             p_bare.col(j) = s.probability.leftCols(n_level).rowwise().sum();
-            m_level_posterior += s.probability.leftCols(n_level) + s.probability.rightCols(n_level);
+            levels += s.probability.leftCols(n_level) + s.probability.rightCols(n_level);
             for (Eigen::Index d = 1; d < m_n; ++d) {
                 const Eigen::MatrixXd& pair = s.pair[static_cast<std::size_t>(d - 1)];
                 onset(d) += pair.topRightCorner(n_level, n_level).sum();
@@ -438,7 +449,7 @@ private:
                 from_snow(d) += 1.0 - p_bare(d - 1, j);
             }
         }
-        m_level_posterior /= static_cast<double>(m_places);
+        m_level_posterior = levels / static_cast<double>(m_places);
         m_bare = p_bare;
         // Channels see the same weather: together they weigh no more than a few.
         const double few = std::min(1.0, tuning.shared_channels / static_cast<double>(m_places));
@@ -521,7 +532,7 @@ private:
                 }
             }
         }
-        m_shared_weight = (tuning.message_channels / informed.cwiseMax(tuning.message_channels));
+        m_shared_weight = m_input.message_channels / informed.cwiseMax(m_input.message_channels);
     }
 
     /// Neighbours agree as often as the record shows, and never across an edge that it shows.

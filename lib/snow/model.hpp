@@ -15,6 +15,10 @@ struct ModelInput {
     double zero_offset_K = 0.0;   ///< what the record reads at 0 degC, from baths
     Eigen::ArrayXd air_mean_degC; ///< a value a day, NaN where unknown; empty: no air
     Eigen::ArrayXd air_swing_K;   ///< same
+    /// Nats in favour of snow during the first rounds: where the record allows two coherent
+    /// answers, the start decides between them.
+    double lean = 0.0;
+    double message_channels = 1.0; ///< channels' worth of evidence that others give of the forcing
 };
 
 /// What the model found.

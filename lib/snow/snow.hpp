@@ -89,7 +89,8 @@ struct SnowFindings {
     std::vector<ClassCover> classes;
     Eigen::ArrayXd forcing_K; ///< swing that open, bare ground would have shown, a value a day
     Eigen::ArrayXd forcing_log_sd;
-    double leak = 0.0; ///< share of a neighbour's temperature that the instrument lets in
+    Eigen::ArrayXd between; ///< sd of the covered share between coherent answers, a value a day
+    double leak = 0.0;      ///< share of a neighbour's temperature that the instrument lets in
     std::vector<std::string> cautions;
     std::string method_text;
 };

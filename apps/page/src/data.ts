@@ -15,7 +15,7 @@ export interface Picture {
 export interface PageData {
     channels: Channels; streams: Row[]; findings: Row; picture: Picture; inflows?: Row[];
     background?: { webp: string; west: number; south: number; east: number; north: number };
-    tie_points?: Row[]; columns?: Row[];
+    tie_points?: Row[]; columns?: Row[]; snows?: Row[];
 }
 export const data: PageData = JSON.parse(document.getElementById('data')!.textContent!);
 export const findings: Row = data.findings ?? {};

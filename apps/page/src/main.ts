@@ -7,8 +7,9 @@ import { moveTo } from './data';
 import { map } from './map';
 import { picture } from './picture';
 import { header, others, stream, trust } from './sections';
+import { snow } from './snow';
 
 document.getElementById('head')!.append(...header());
 const main = document.getElementById('main')!;
-main.append(...([map(), picture(), ...profiles(), ...stream(), ...others(), ...trust()].filter(Boolean) as Node[]));
+main.append(...([map(), picture(), ...profiles(), ...stream(), ...snow(), ...others(), ...trust()].filter(Boolean) as Node[]));
 moveTo({});

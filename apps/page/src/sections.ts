@@ -55,20 +55,8 @@ export function stream(): HTMLElement[] {
     });
 }
 
-const seconds = (rows: Row[], key: string) => rows.map(r => Date.parse(r[key]) / 1000);
-const numbers = (rows: Row[], key: string, scale = 1) => rows.map(r => (r[key] == null ? null : r[key] * scale));
-/// Value with its band of one sd either side, over time.
-function banded(id: string, title: string, rows: Row[], time: string, key: string, sd: string, unit: string, scale = 1): HTMLElement {
-    const v = numbers(rows, key, scale), s = numbers(rows, sd, scale), side = (k: number) => v.map((x, i) => (x == null || s[i] == null ? null : x + k * s[i]!));
-    return chart({ id, title, x: seconds(rows, time), unit, time: true, band: [3, 2], lines: [{ label: 'value', values: v }, { label: '\u2212 1 sd', values: side(-1), colour: '--line3' }, { label: '+ 1 sd', values: side(1), colour: '--line3' }] });
-}
 export function others(): HTMLElement[] {
     const out: HTMLElement[] = [];
-    list(findings.snow).forEach((s, n) => {
-        const c = list(s.channels);
-        out.push(panel('h-snow' + n, `Snow: ${isolated(s.stretch)}`, list(s.cover).length > 0 && banded('h-cover' + n, 'Covered share of the line', list(s.cover), 'date', 'covered_fraction', 'covered_fraction_sd', '%', 100),
-            c.length > 0 && chart({ id: 'h-melt' + n, title: 'Days under snow along the line', x: numbers(c, 'fibre_m') as number[], unit: 'days', link: 'fibre', lines: [{ label: 'covered days', values: numbers(c, 'covered_days') }] })));
-    });
     out.push(...columns());
     list(findings.bed).forEach((b, n) => out.push(bed(b, n)));
     return out;
