@@ -273,7 +273,8 @@ SnowFindings interpret(const SnowInput& input) {
     ModelResult model = run_model(f.days, m);
     f.leak = find_leak(input, f.days, model.probability);
     if (f.leak > 0.05)
-        model = run_models(make_days(input.time_s, input.bin_s, sharpened(input, f.leak), offset_s,
+        model = run_models(make_days(input.time_s, input.bin_s,
+                                     sharpened(input, f.leak, f.days, model.probability), offset_s,
                                      input.zero_offset_K),
                            m, f.between);
     else

@@ -60,27 +60,29 @@ double find_leak(const SnowInput& input, const Days& days, const Eigen::ArrayXXd
         }
     if (slopes.size() < 12)
         return 0.0;
-    const auto middle = slopes.begin() + static_cast<std::ptrdiff_t>(slopes.size() / 2);
-    std::nth_element(slopes.begin(), middle, slopes.end());
-    return std::clamp(*middle, 0.0, 0.35);
+    const auto third = slopes.begin() + static_cast<std::ptrdiff_t>(slopes.size() / 3);
+    std::nth_element(slopes.begin(), third, slopes.end());
+    return std::clamp(*third, 0.0, 0.35);
 }
 
-Eigen::ArrayXXf sharpened(const SnowInput& input, double leak) {
+Eigen::ArrayXXf sharpened(const SnowInput& input, double leak, const Days& days,
+                          const Eigen::ArrayXXd& probability) {
     const Eigen::ArrayXXf& seen = input.temperature_degC;
     Eigen::ArrayXXf result = seen;
-    const auto share = static_cast<float>(leak);
-    for (Eigen::Index j = 0; j < seen.cols(); ++j) {
+    for (Eigen::Index j = 0; j < seen.cols(); ++j)
         for (Eigen::Index i = 0; i < seen.rows(); ++i) {
-            const float own = seen(i, j);
-            float beside = 0.0F;
+            const auto d = static_cast<Eigen::Index>((input.time_s(i) - days.first_s(0)) / 86400.0);
+            float let_in = 0.0F, share = 0.0F;
             for (const Eigen::Index k : {j - 1, j + 1}) {
-                const bool near = k >= 0 && k < seen.cols() &&
-                                  std::abs(input.fibre_m(k) - input.fibre_m(j)) <= reach_m(input);
-                beside += near && !std::isnan(seen(i, k)) ? seen(i, k) : own;
+                if (k < 0 || k >= seen.cols() || std::isnan(seen(i, k)) ||
+                    std::abs(input.fibre_m(k) - input.fibre_m(j)) > reach_m(input))
+                    continue;
+                const auto weight = static_cast<float>(leak * (1.0 - probability(d, k)));
+                let_in += weight * seen(i, k);
+                share += weight;
             }
-            result(i, j) = (own - share * beside) / (1.0F - 2.0F * share);
+            result(i, j) = (seen(i, j) - let_in) / (1.0F - share);
         }
-    }
     return result;
 }
 
