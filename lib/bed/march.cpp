@@ -4,6 +4,7 @@
 #include "heat/ground.hpp"
 
 #include <algorithm>
+#include <array>
 #include <cmath>
 #include <limits>
 
@@ -255,7 +256,7 @@ void March::activate(Run& run, double time_s) const {
         ++run.newest;
         if (run.newest < 0)
             continue;
-        const Index group_first[] = {m_layout.flux(), m_layout.top(), m_layout.bottom()};
+        const std::array<Index, 3> group_first{m_layout.flux(), m_layout.top(), m_layout.bottom()};
         for (std::size_t g = 0; g < 3; ++g) {
             const Index slot = run.slots[g] + run.newest % m_memory;
             run.index[static_cast<std::size_t>(slot)] = group_first[g] + run.newest;

@@ -29,8 +29,8 @@ double propagated(const std::function<double(const Known&)>& f, const Known& at,
     for (std::size_t k = 0; k < sd.size(); ++k) {
         const auto moved = [&](double by) {
             Known m = at;
-            double* const parts[] = {&m.log_ratio, &m.lag_rad, &m.conductivity, &m.capacity,
-                                     &m.spacing_m};
+            const std::array<double*, 5> parts{&m.log_ratio, &m.lag_rad, &m.conductivity,
+                                               &m.capacity, &m.spacing_m};
             *parts[k] += by;
             return f(m);
         };
