@@ -56,7 +56,7 @@ void add_stages(CLI::App& app, Job& job) {
           false,
           false,
           false,
-          {"channels", "baths"}},
+          {"channels", "baths", "events"}},
          {"place",
           "Put every channel on the ground, as tables",
           false,

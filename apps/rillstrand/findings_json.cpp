@@ -4,6 +4,7 @@
 #include "bed_tables.hpp"
 #include "cautions.hpp"
 #include "column_stage.hpp"
+#include "quality_events.hpp"
 #include "sha256.hpp"
 #include "snow_tables.hpp"
 
@@ -89,6 +90,7 @@ Json quality_json(const Session& session, const Tables& tables) {
             {"spatial_response_m", session.spatial_response_m},
             {"flags", flags},
             {"legs", legs},
+            {"events", events_json(session)},
             {"baths", baths == nullptr ? Json::array() : rows_json(*baths)}};
 }
 

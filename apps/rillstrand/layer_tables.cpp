@@ -5,6 +5,7 @@
 #include "column_stage.hpp"
 #include "corridor.hpp"
 #include "layers.hpp"
+#include "quality_events.hpp"
 #include "snow_tables.hpp"
 
 #include "base/text.hpp"
@@ -389,6 +390,8 @@ Tables make_tables(const Session& session) {
         tables.all.push_back(std::move(table));
     if (!session.baths.empty())
         tables.all.push_back(baths_table(session));
+    if (!session.events.empty())
+        tables.all.push_back(events_table(session));
     return tables;
 }
 

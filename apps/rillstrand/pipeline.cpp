@@ -6,6 +6,7 @@
 #include "findings_json.hpp"
 #include "layer_tables.hpp"
 #include "page_data.hpp"
+#include "quality_events.hpp"
 #include "snow_stage.hpp"
 
 #include "base/text.hpp"
@@ -249,6 +250,7 @@ void gather_stage(Session& session, const Output& output, const Context& context
 void assess_stage(Session& session, const Context& context) {
     session.scan = record::scan(*session.source, {}, context.progress);
     flag_channels(session);
+    events_stage(session, context);
     for (const auto& [flag, words] :
          {std::pair{"dead", "hold no sample at all"},
           std::pair{"sparse", "miss over half of their samples"},

@@ -8,6 +8,7 @@
 #include "campaign/campaign.hpp"
 #include "column/column.hpp"
 #include "quality/baths.hpp"
+#include "quality/events.hpp"
 #include "quality/legs.hpp"
 #include "record/gather.hpp"
 #include "record/scan.hpp"
@@ -38,6 +39,7 @@ struct Session {
     double spatial_response_m = 1.0;
     std::optional<record::ScanSummary> scan;
     std::vector<quality::BathResult> baths;
+    std::vector<quality::Event> events;
     std::optional<geo::Placement> placement;
     std::optional<quality::LegComparison> legs; ///< with a turnaround
     ChannelNames names;

@@ -117,7 +117,7 @@ with tempfile.TemporaryDirectory() as place:
     check(inside > 0.8 * total, f"positions: {inside} of {total} inside twice the stated sd")
 
     # A stage alone writes its own tables only.
-    for command, tables in (("place", {"channels.csv", "cable.csv", "tie_points.csv"}), ("assess", {"channels.csv", "baths.csv"})):
+    for command, tables in (("place", {"channels.csv", "cable.csv", "tie_points.csv"}), ("assess", {"channels.csv", "baths.csv", "events.csv"})):
         (folder / "one.toml").write_text('[campaign]\noutput = "alone"\n' + (folder / "campaign.toml").read_text().split("\n", 7)[7])
         subprocess.run(["rm", "-rf", folder / "alone"], check=True)
         done = subprocess.run([PROGRAM, "-q", command, folder / "one.toml"], capture_output=True, text=True)
