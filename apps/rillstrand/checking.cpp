@@ -18,8 +18,9 @@ void refuse_unbuilt(const campaign::Campaign& campaign, Problems& problems) {
         problems.add(campaign.place(where) + ": " + what +
                      " is not built yet; take it out of the campaign file for now");
     };
-    if (campaign.adjust)
-        refuse(campaign.adjust->where, "[adjust]");
+    for (const auto& stream : campaign.streams)
+        if (stream.weather)
+            refuse(stream.where, "[stream.weather]");
 }
 
 /// Keys that need another one to have an effect.

@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "findings_json.hpp"
 
+#include "adjust_stage.hpp"
 #include "bed_tables.hpp"
 #include "cautions.hpp"
 #include "column_stage.hpp"
@@ -91,6 +92,7 @@ Json quality_json(const Session& session, const Tables& tables) {
             {"flags", flags},
             {"legs", legs},
             {"events", events_json(session)},
+            {"adjustment", adjustment_json(session)},
             {"baths", baths == nullptr ? Json::array() : rows_json(*baths)}};
 }
 

@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "layer_tables.hpp"
 
+#include "adjust_stage.hpp"
 #include "bed_tables.hpp"
 #include "column_stage.hpp"
 #include "corridor.hpp"
@@ -108,6 +109,9 @@ Table channels_table(const Session& session, const Positions& positions) {
     table.add_real("diurnal_phase_h", "hour of the 24 h wave's peak, UTC", "h",
                    reals(s.diurnal_phase_h), 3);
     table.add_real("noise_c", "white noise of one sample", "K", reals(s.noise_K), 4);
+    if (session.adjustment)
+        table.add_real("adjust_sd_c", "what the baths leave open, the same error at all times", "K",
+                       reals(session.adjustment->channel_sd_K), 4);
     table.add_text("flag", "what is wrong with the channel", session.names.flag);
     positions.append(table, fibre_m);
     if (!session.placement)
@@ -446,6 +450,7 @@ void tell_findings(const Session& session, std::ostream& out) {
     out << session.campaign.name << ": " << axes.n_place() << " channels, " << axes.n_time()
         << " traces from " << text::iso_time(axes.time_s(0)) << " to "
         << text::iso_time(axes.time_s(axes.n_time() - 1)) << '\n';
+    tell_adjustment(session, out);
     for (const auto& bath : session.baths)
         out << "bath '" << bath.name << "': bias " << text::fixed(bath.bias_c, 3) << " ± "
             << text::fixed(bath.bias_sd_c, 3) << " K, rmse " << text::fixed(bath.rmse_c, 3)

@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "pipeline.hpp"
 
+#include "adjust_stage.hpp"
 #include "bed_stage.hpp"
 #include "column_stage.hpp"
 #include "findings_json.hpp"
@@ -93,17 +94,6 @@ void flag_channels(Session& session) {
 
 Eigen::Index count_flag(const Session& session, const char* flag) {
     return std::count(session.names.flag.begin(), session.names.flag.end(), flag);
-}
-
-quality::BathReference reference_of(const Session& session, const campaign::Bath& bath) {
-    const record::Axes& axes = session.axes();
-    if (bath.temperature_c)
-        return quality::constant_reference(axes.n_time(), *bath.temperature_c,
-                                           bath.temperature_sd_c);
-    const auto series = record::read_side_series(*bath.probe, session.campaign.record);
-    return {record::mean_over_intervals(series, axes.time_s, axes.interval_s,
-                                        record::usual_gap_s(series)),
-            bath.temperature_sd_c};
 }
 
 stream::Series series_of(const Session& session, const campaign::SideSeries& where) {
@@ -245,6 +235,7 @@ void gather_stage(Session& session, const Output& output, const Context& context
         spacing_m = (axes.distance_m(axes.n_place() - 1) - axes.distance_m(0)) /
                     static_cast<double>(axes.n_place() - 1);
     session.spatial_response_m = std::max(1.0, 2.0 * spacing_m);
+    adjust_stage(session, output, context);
 }
 
 void assess_stage(Session& session, const Context& context) {
@@ -262,7 +253,7 @@ void assess_stage(Session& session, const Context& context) {
     }
     for (const auto& bath : session.campaign.baths) {
         session.baths.push_back(quality::assess_bath(
-            *session.source, bath, reference_of(session, bath), session.spatial_response_m));
+            *session.source, bath, bath_reference(session, bath), session.spatial_response_m));
         const auto& result = session.baths.back();
         if (!result.stirred)
             session.warnings.push_back(

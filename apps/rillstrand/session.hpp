@@ -7,6 +7,7 @@
 #include "bed/bed.hpp"
 #include "campaign/campaign.hpp"
 #include "column/column.hpp"
+#include "quality/adjust.hpp"
 #include "quality/baths.hpp"
 #include "quality/events.hpp"
 #include "quality/legs.hpp"
@@ -38,6 +39,7 @@ struct Session {
     record::Axes record_axes;
     double spatial_response_m = 1.0;
     std::optional<record::ScanSummary> scan;
+    std::optional<quality::Adjustment> adjustment; ///< with [adjust]
     std::vector<quality::BathResult> baths;
     std::vector<quality::Event> events;
     std::optional<geo::Placement> placement;
