@@ -250,14 +250,14 @@ Eigen::Vector2d Polyline::direction_at(double measure_m) const {
     return (m_xy.row(k + 1) - m_xy.row(k)).matrix().transpose().normalized();
 }
 
-Nearest Polyline::on_piece(Eigen::Index k, double x, double y) const {
-    const double dx = m_xy(k + 1, 0) - m_xy(k, 0), dy = m_xy(k + 1, 1) - m_xy(k, 1);
-    const double px = x - m_xy(k, 0), py = y - m_xy(k, 1);
+Nearest Polyline::on_piece(Eigen::Index piece, double x, double y) const {
+    const double dx = m_xy(piece + 1, 0) - m_xy(piece, 0), dy = m_xy(piece + 1, 1) - m_xy(piece, 1);
+    const double px = x - m_xy(piece, 0), py = y - m_xy(piece, 1);
     const double w = std::clamp((px * dx + py * dy) / (dx * dx + dy * dy), 0.0, 1.0);
     const double off = std::hypot(px - w * dx, py - w * dy);
     // Right of travel: the cross product of direction and offset is negative.
     const double sign = dx * py - dy * px > 0.0 ? -1.0 : 1.0;
-    return {m_measure(k) + w * (m_measure(k + 1) - m_measure(k)), sign * off};
+    return {m_measure(piece) + w * (m_measure(piece + 1) - m_measure(piece)), sign * off};
 }
 
 Nearest Polyline::nearest(double x, double y) const {

@@ -26,8 +26,9 @@ std::vector<quality::AdjustBath> adjust_baths(const Session& session) {
                             "' holds no channel of the record; correct from_m and to_m"};
         if (!ready.reference.temperature_degC.isFinite().any())
             throw DataError{session.campaign.place(bath.where) + ": the probe of bath '" +
-                            bath.name + "' has no value at any time of the record; check its times "
-                                        "and record.time_zone"};
+                            bath.name +
+                            "' has no value at any time of the record; check its times "
+                            "and record.time_zone"};
         baths.push_back(std::move(ready));
     }
     return baths;
@@ -53,12 +54,14 @@ void write_record(const record::Source& source, const std::filesystem::path& pat
     for (Eigen::Index i = 0; i < axes.n_time(); i += rows_at_once) {
         const Eigen::Index rows = std::min(rows_at_once, axes.n_time() - i);
         std::vector<Eigen::ArrayXXf> blocks;
+        blocks.reserve(head.quantities.size());
         for (const Quantity quantity : head.quantities) {
             blocks.emplace_back(rows, axes.n_place());
             source.read(quantity, i, 0, blocks.back());
         }
         for (Eigen::Index r = 0; r < rows; ++r) {
             std::vector<Eigen::ArrayXf> row;
+            row.reserve(blocks.size());
             for (const auto& block : blocks)
                 row.emplace_back(block.row(r).transpose());
             writer.add_row(axes.time_s(i + r), row);
@@ -157,8 +160,8 @@ void tell_adjustment(const Session& session, std::ostream& out) {
         << text::fixed(how.channel_sd_K.minCoeff(), 3) << " to "
         << text::fixed(how.channel_sd_K.maxCoeff(), 3) << " K";
     if (how.method == campaign::AdjustMethod::raman)
-        out << "; gamma " << text::fixed(how.gamma_K, 1) << " ± "
-            << text::fixed(how.gamma_sd_K, 1) << " K";
+        out << "; gamma " << text::fixed(how.gamma_K, 1) << " ± " << text::fixed(how.gamma_sd_K, 1)
+            << " K";
     out << '\n';
     for (const auto& step : how.steps)
         out << "  loss at " << text::fixed(step.at_m, 1) << " m, uncorrected "

@@ -2,6 +2,7 @@
 #include "heat/water.hpp"
 
 #include <cmath>
+#include <initializer_list>
 
 namespace rillstrand::heat {
 
@@ -11,10 +12,10 @@ constexpr double no_salt_gkg = 1e-9;
 constexpr double limnological_gkg = 0.6;
 
 /// Sum of c[k] x^k.
-template <std::size_t n> double polynomial(const double (&c)[n], double x) {
+double polynomial(std::initializer_list<double> c, double x) {
     double sum = 0.0;
-    for (std::size_t k = n; k-- > 0;)
-        sum = sum * x + c[k];
+    for (const double* k = c.end(); k != c.begin();)
+        sum = sum * x + *--k;
     return sum;
 }
 
