@@ -225,6 +225,9 @@ void gather_stage(Session& session, const Output& output, const Context& context
     session.gathered = store::gather(session.campaign, record_nc,
                                      context.now + " gathered by rillstrand " RILLSTRAND_VERSION,
                                      context.progress);
+    if (!std::filesystem::exists(record_nc)) // somebody removed the folder meanwhile
+        throw MachineError{record_nc.string() +
+                           ": vanished while the record was gathered; run again"};
     session.source = store::open_canonical(record_nc);
     session.record_axes = session.source->axes();
     session.warnings = session.gathered.warnings;
